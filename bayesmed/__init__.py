@@ -1,0 +1,104 @@
+"""bayesmed: causal mediation in which unmeasured confounding is a belief that can be stated and compared.
+
+Public names are loaded on first use, so that ``import bayesmed`` costs next to nothing.
+"""
+
+from importlib import import_module
+from importlib.metadata import version as _version
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from bayesmed import priors
+    from bayesmed.conclusions.claim import Claim
+    from bayesmed.core import errors
+    from bayesmed.examples import load_example
+    from bayesmed.front.comparison import Comparison
+    from bayesmed.front.fit import Fit, load
+    from bayesmed.front.study import Study
+    from bayesmed.front.tipping import Tipping
+    from bayesmed.priors import (
+        LKJ,
+        Coefficients,
+        Exponential,
+        FisherNormal,
+        HalfNormal,
+        HalfStudentT,
+        LogNormal,
+        Normal,
+        PointMass,
+        StretchedBeta,
+        StudentT,
+        TruncatedNormal,
+        Uniform,
+    )
+
+_HOME = {
+    "Claim": "bayesmed.conclusions.claim",
+    "Comparison": "bayesmed.front.comparison",
+    "Fit": "bayesmed.front.fit",
+    "Study": "bayesmed.front.study",
+    "Tipping": "bayesmed.front.tipping",
+    "load": "bayesmed.front.fit",
+    "load_example": "bayesmed.examples",
+    **dict.fromkeys(
+        (
+            "LKJ",
+            "Coefficients",
+            "Exponential",
+            "FisherNormal",
+            "HalfNormal",
+            "HalfStudentT",
+            "LogNormal",
+            "Normal",
+            "PointMass",
+            "StretchedBeta",
+            "StudentT",
+            "TruncatedNormal",
+            "Uniform",
+        ),
+        "bayesmed.priors",
+    ),
+}
+_MODULES = {"errors": "bayesmed.core.errors", "priors": "bayesmed.priors"}
+
+__all__ = [
+    "LKJ",
+    "Claim",
+    "Coefficients",
+    "Comparison",
+    "Exponential",
+    "FisherNormal",
+    "Fit",
+    "HalfNormal",
+    "HalfStudentT",
+    "LogNormal",
+    "Normal",
+    "PointMass",
+    "StretchedBeta",
+    "StudentT",
+    "Study",
+    "Tipping",
+    "TruncatedNormal",
+    "Uniform",
+    "errors",
+    "load",
+    "load_example",
+    "priors",
+]
+
+
+def __getattr__(name: str) -> Any:
+    if name in _HOME:
+        value = getattr(import_module(_HOME[name]), name)
+    elif name in _MODULES:
+        value = import_module(_MODULES[name])
+    elif name == "__version__":
+        value = _version("bayesmed")
+    else:
+        raise AttributeError(f"module 'bayesmed' has no attribute {name!r}")
+    globals()[name] = value
+    return value
+
+
+def __dir__() -> list[str]:
+    return sorted(__all__)

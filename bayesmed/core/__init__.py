@@ -1,0 +1,1 @@
+"""Plain numpy and scipy: the map, contrasts, tipping draws, sufficient statistics. No labels, no I/O."""
