@@ -1,0 +1,65 @@
+"""Beliefs about the residual correlation ρ, and priors of coefficients: frozen values."""
+
+from bayesmed.priors.accept import coerce
+from bayesmed.priors.adapters import FromScipy, Wrapped
+from bayesmed.priors.coefficient_set import Coefficients
+from bayesmed.priors.coefficients import (
+    CoefficientPrior,
+    Exponential,
+    HalfNormal,
+    HalfStudentT,
+    LogNormal,
+    Normal,
+    StudentT,
+)
+from bayesmed.priors.description import inflation_probability
+from bayesmed.priors.elicitation import from_quantiles, quantile_gaps
+from bayesmed.priors.fisher_normal import FisherNormal
+from bayesmed.priors.from_pymc import FromMaker
+from bayesmed.priors.mixture import Mixture
+from bayesmed.priors.named import coefficient_from_spec, from_spec, to_spec
+from bayesmed.priors.panel import panel
+from bayesmed.priors.point import PointMass
+from bayesmed.priors.prior import Prior
+from bayesmed.priors.protocol import HasDirection
+from bayesmed.priors.shared_cause import SharedCause
+from bayesmed.priors.shared_size import BetaShare
+from bayesmed.priors.stretched_beta import LKJ, StretchedBeta
+from bayesmed.priors.tabulated import Tabulated, from_draws
+from bayesmed.priors.truncated_normal import TruncatedNormal
+from bayesmed.priors.uniform import Uniform
+
+__all__ = [
+    "LKJ",
+    "BetaShare",
+    "CoefficientPrior",
+    "Coefficients",
+    "Exponential",
+    "FisherNormal",
+    "FromMaker",
+    "FromScipy",
+    "HalfNormal",
+    "HalfStudentT",
+    "HasDirection",
+    "LogNormal",
+    "Mixture",
+    "Normal",
+    "PointMass",
+    "Prior",
+    "SharedCause",
+    "StretchedBeta",
+    "StudentT",
+    "Tabulated",
+    "TruncatedNormal",
+    "Uniform",
+    "Wrapped",
+    "coefficient_from_spec",
+    "coerce",
+    "from_draws",
+    "from_quantiles",
+    "from_spec",
+    "inflation_probability",
+    "panel",
+    "quantile_gaps",
+    "to_spec",
+]
