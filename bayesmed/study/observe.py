@@ -1,0 +1,216 @@
+"""What was observed: a data frame and two formulas become a frozen value."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from typing import Any
+
+import numpy as np
+import pandas as pd
+
+from bayesmed.core.errors import ArgumentError, DataError, FormulaError
+from bayesmed.core.mapping import Alignment, Array, align
+from bayesmed.study.changed import repeated, with_values
+from bayesmed.study.designs import Design, design, left_values
+from bayesmed.study.exposure import contrast_of
+from bayesmed.study.formulas import Formulas, read
+from bayesmed.study.frame import Complete, RowsUsed, complete, given
+from bayesmed.study.identifiers import Identifier, identifiers
+from bayesmed.study.moderators import Moderator, default_moderators, moderators_found
+
+
+@dataclass(frozen=True, eq=False)
+class Observed:
+    """The data, formulas and roles of a study, checked. Two are the same only if they are one object.
+
+    Attributes
+    ----------
+    frame : DataFrame
+        The complete rows, only the columns used, with the index of the data.
+    exposure : str
+        The exposure's column.
+    contrast : tuple of two values
+        (x0, x1), plain Python values.
+    mediator_name, outcome_name : str
+        The expressions left of ``~``.
+    mediator_formula, outcome_formula : str
+        As given.
+    mediator_terms, outcome_terms : tuple of str
+        The columns of the two designs.
+    mediator_design : array, shape (row, mediator_term)
+    outcome_design : array, shape (row, outcome_term)
+    mediator, outcome : array, shape (row,)
+        The values of the expressions left of ``~``.
+    alignment : Alignment
+        Where the mediator and its terms stand in the outcome design.
+    moderators : tuple of Moderator
+        All that were found.
+    default_moderators : tuple of str
+        Those that get a default grid.
+    rows : RowsUsed
+    unused_levels : dict of str to tuple
+        Levels of categorical columns that no row used has.
+    identifiers : tuple of Identifier
+        Unused columns of the data that look like identifiers and repeat.
+    formulas : Formulas
+        The two formulas in checked pieces.
+    mediator_equation, outcome_equation : Design
+        The two right sides, to be evaluated on changed rows.
+    """
+
+    frame: pd.DataFrame
+    exposure: str
+    contrast: tuple[Any, Any]
+    mediator_name: str
+    outcome_name: str
+    mediator_formula: str
+    outcome_formula: str
+    mediator_terms: tuple[str, ...]
+    outcome_terms: tuple[str, ...]
+    mediator_design: Array = field(repr=False)
+    outcome_design: Array = field(repr=False)
+    mediator: Array = field(repr=False)
+    outcome: Array = field(repr=False)
+    alignment: Alignment = field(repr=False)
+    moderators: tuple[Moderator, ...]
+    default_moderators: tuple[str, ...]
+    rows: RowsUsed
+    unused_levels: Mapping[str, tuple[Any, ...]]
+    identifiers: tuple[Identifier, ...]
+    formulas: Formulas = field(repr=False)
+    mediator_equation: Design = field(repr=False)
+    outcome_equation: Design = field(repr=False)
+
+    @property
+    def covariates(self) -> tuple[str, ...]:
+        """Every column right of ``~`` but the exposure: those that `at` may name."""
+        left = self.formulas.mediator.columns | self.formulas.outcome.columns
+        return tuple(name for name in self.formulas.columns if name in left and name != self.exposure)
+
+
+def observe(
+    data: Any,
+    *,
+    exposure: str,
+    contrast: Sequence[Any] | None = None,
+    mediator: str,
+    outcome: str,
+    moderators: Sequence[str] | None = None,
+) -> Observed:
+    """Return what was observed.
+
+    Parameters
+    ----------
+    data : pandas.DataFrame, dict of columns, or any eager frame that narwhals knows
+    exposure : str
+        A numeric, boolean or categorical column.
+    contrast : two values, optional
+        The exposure values (from, to). May be left out for a 0/1, a boolean or a two-level categorical one.
+    mediator, outcome : str
+        Formulas, such as ``"exercise ~ coaching + age"`` and ``"function ~ exercise * age + coaching"``.
+    moderators : list of str, optional
+        Which of the moderators found get a default grid; all of them by default.
+
+    Raises
+    ------
+    DataError, FormulaError, DesignError, ArgumentError
+        Naming the column, formula piece or argument at fault.
+    """
+    source = given(data)
+    if not isinstance(exposure, str):
+        raise ArgumentError(f"exposure: expected the name of a column, got {exposure!r}.")
+    formulas = read(mediator, outcome, exposure, source.names)
+    used = complete(source, formulas.columns)
+    levels = _level_texts(used.frame)
+    if any(formulas.words.prefix in level for level in levels):
+        # A level that looks like one of our placeholders: take other placeholders.
+        formulas = read(mediator, outcome, exposure, source.names, avoid=levels)
+    frame = used.frame
+    found = moderators_found(formulas, exposure, frame)
+    pair = contrast_of(frame[exposure], contrast, was_text=exposure in used.text)
+    sides = _sides(formulas, used)
+    m_design, m_values = design(formulas.mediator, "mediator", formulas.words, frame, None)
+    y_design, y_values = design(formulas.outcome, "outcome", formulas.words, frame, sides[0])
+    _check_contrast_rows(m_design, y_design, frame, exposure, pair, sides[0])
+    return Observed(
+        frame=frame,
+        exposure=exposure,
+        contrast=pair,
+        mediator_name=formulas.mediator.left.label,
+        outcome_name=formulas.outcome.left.label,
+        mediator_formula=mediator,
+        outcome_formula=outcome,
+        mediator_terms=m_design.labels,
+        outcome_terms=y_design.labels,
+        mediator_design=_frozen(m_values),
+        outcome_design=_frozen(y_values),
+        mediator=_frozen(sides[0]),
+        outcome=_frozen(sides[1]),
+        alignment=align(m_values, y_values, sides[0]),
+        moderators=found,
+        default_moderators=default_moderators(found, moderators),
+        rows=used.rows,
+        unused_levels=used.unused_levels,
+        identifiers=identifiers(source, formulas.columns, used.positions),
+        formulas=formulas,
+        mediator_equation=m_design,
+        outcome_equation=y_design,
+    )
+
+
+def _sides(formulas: Formulas, used: Complete) -> tuple[Array, Array]:
+    """Return the values of the mediator and the outcome."""
+    values = []
+    for argument, formula in (("mediator", formulas.mediator), ("outcome", formulas.outcome)):
+        left = formula.left
+        for name in left.columns:
+            if isinstance(used.frame[name].dtype, pd.CategoricalDtype) and left.is_plain:
+                kind = "text" if name in used.text else "categorical"
+                raise DataError(
+                    f"{argument}: column '{name}' is {kind}; {argument}s are numbers. Turn it into a number first."
+                )
+        side = left_values(left, argument, formulas.words, used.frame)
+        if np.ptp(side) <= 1e-12 * np.abs(side).max():
+            raise DataError(
+                f"{argument}: {left.label} is constant ({side[0]:g}) in the {len(side)} complete rows; "
+                "nothing can be explained."
+            )
+        values.append(side)
+    return values[0], values[1]
+
+
+def _check_contrast_rows(
+    m_design: Design,
+    y_design: Design,
+    frame: pd.DataFrame,
+    exposure: str,
+    contrast: tuple[Any, Any],
+    mediator: Array,
+) -> None:
+    """Refuse a contrast at which a formula cannot be evaluated, such as log(dose) at dose 0."""
+    first = frame.iloc[:1]
+    try:
+        both = repeated(first, [{exposure: value} for value in contrast])
+        m_design.rows(both)
+        y_design.rows(both, np.repeat(mediator[:1], 2))
+    except FormulaError:
+        for value in contrast:
+            changed = with_values(first, {exposure: value})
+            try:
+                m_design.rows(changed)
+                y_design.rows(changed, mediator[:1])
+            except FormulaError as error:
+                raise ArgumentError(f"contrast: at {exposure} = {value!r}: {error}") from None
+        raise
+
+
+def _level_texts(frame: pd.DataFrame) -> list[str]:
+    categorical = [c for c in frame.columns if isinstance(frame[c].dtype, pd.CategoricalDtype)]
+    return [str(level) for name in categorical for level in frame[name].cat.categories]
+
+
+def _frozen(values: Array) -> Array:
+    values = np.array(values, dtype=float)
+    values.setflags(write=False)
+    return values
