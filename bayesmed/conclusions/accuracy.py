@@ -1,0 +1,43 @@
+"""Monte Carlo error of averages over draws, with effective sample sizes where draws depend on each other."""
+
+import numpy as np
+
+from bayesmed.core.mapping import Array
+from bayesmed.fit.result import FitResult
+
+
+def effective_draws(values: Array, result: FitResult) -> Array:
+    """Return how many independent draws the average of each row is worth.
+
+    Parameters
+    ----------
+    values : array, shape (row, draw)
+    result : FitResult
+        Tells how draws divide into chains and whether they are independent.
+
+    Returns
+    -------
+    array, shape (row,)
+    """
+    rows, draws = values.shape
+    if result.independent or result.shape[1] < 4:
+        return np.full(rows, float(draws))
+    from arviz_stats.base import array_stats
+
+    chains, per_chain = result.shape
+    ess = np.asarray(array_stats.ess(values.reshape(rows, chains, per_chain), chain_axis=1, draw_axis=2, method="mean"))
+    # A row without spread has no autocorrelation to estimate.
+    return np.where(np.isfinite(ess), np.minimum(ess, draws), draws)
+
+
+def mean_with_error(values: Array, result: FitResult) -> tuple[Array, Array]:
+    """Return the mean of each row, and its Monte Carlo error.
+
+    Values are probabilities per draw. Where every draw agrees on 0 or 1 the sample spread is zero, yet the
+    probability is only known to be within about one effective draw of it, which is then the error given.
+    """
+    mean = values.mean(axis=1)
+    ess = effective_draws(values, result)
+    error = values.std(axis=1) / np.sqrt(ess)
+    unanimous = (values.max(axis=1) == values.min(axis=1)) & ((mean == 0) | (mean == 1))
+    return mean, np.where(unanimous, 1 / ess, error)

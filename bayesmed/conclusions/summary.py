@@ -1,0 +1,69 @@
+"""The summary table: mean, SD, interval and probability of the claim, by effect and moderator point."""
+
+from typing import Any
+
+import numpy as np
+import pandas as pd
+
+from bayesmed.conclusions.claim import Claim, as_claim
+from bayesmed.conclusions.view import View, beliefs_along_rho, effect_names, view
+from bayesmed.core.errors import ArgumentError
+from bayesmed.fit.result import FitResult
+from bayesmed.study.points import Points, points
+
+STATISTICS = ("mean", "sd", "lower", "upper", "probability", "mcse")
+RHO_GRID = tuple(round(-0.9 + 0.1 * k, 1) for k in range(19))
+"""Fixed correlations from -0.9 to 0.9. Common practice, no source."""
+
+
+def summary(
+    result: FitResult, at: Any = None, rho: Any = None, claim: Claim | None = None, ci_prob: float = 0.95
+) -> pd.DataFrame:
+    """Return the long table of all effects; see ``Fit.summary``."""
+    chosen, stated, width = points(result.observed, at), as_claim(claim), checked_width(ci_prob)
+    fixed = beliefs_along_rho(rho)
+    if fixed is None:
+        return table(view(result, chosen, rho), chosen, stated, width)
+    return _by_rho(result, chosen, stated, width, fixed)
+
+
+def rho_grid(
+    result: FitResult, rho: Any = None, at: Any = None, claim: Claim | None = None, ci_prob: float = 0.95
+) -> pd.DataFrame:
+    """Return the table at each of a grid of fixed correlations; see ``Fit.rho_grid``."""
+    fixed = list(RHO_GRID) if rho is None else beliefs_along_rho([rho] if np.isscalar(rho) else rho)
+    if fixed is None:
+        raise ArgumentError(f"rho={rho!r} must be a number or a list of numbers between -1 and 1")
+    return _by_rho(result, points(result.observed, at), as_claim(claim), checked_width(ci_prob), fixed)
+
+
+def table(seen: View, chosen: Points, claim: Claim, ci_prob: float) -> pd.DataFrame:
+    """Return the long table of one view: a row per effect and moderator point."""
+    tail = (1 - ci_prob) / 2
+    parts = []
+    for effect in effect_names(seen.contrasts):
+        mean, sd = seen.moments(effect)
+        interval = seen.quantiles(effect, np.array([tail, 1 - tail]))
+        probability, mcse = seen.probability(effect, claim)
+        columns: dict[str, Any] = {"effect": effect}
+        for name in (*chosen.dims, *chosen.scalars):
+            columns[name] = [point[name] for point in chosen.values]
+        columns.update(zip(STATISTICS, (mean, sd, *interval.T, probability, mcse), strict=True))
+        parts.append(pd.DataFrame(columns))
+    return pd.concat(parts, ignore_index=True)
+
+
+def checked_width(ci_prob: Any) -> float:
+    """Return the interval's probability if it lies strictly between 0 and 1."""
+    if isinstance(ci_prob, bool) or not isinstance(ci_prob, int | float | np.number) or not 0 < ci_prob < 1:
+        raise ArgumentError(f"ci_prob={ci_prob!r} must be a probability between 0 and 1, for example 0.95")
+    return float(ci_prob)
+
+
+def _by_rho(result: FitResult, chosen: Points, claim: Claim, ci_prob: float, fixed: list[float]) -> pd.DataFrame:
+    parts = []
+    for value in fixed:
+        part = table(view(result, chosen, value), chosen, claim, ci_prob)
+        part.insert(0, "rho", value)
+        parts.append(part)
+    return pd.concat(parts, ignore_index=True)

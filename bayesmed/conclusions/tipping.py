@@ -1,0 +1,136 @@
+"""The tipping distribution of a claim: at which residual correlation each draw crosses the claim's limit."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+import pandas as pd
+import xarray as xr
+
+from bayesmed.conclusions.accuracy import mean_with_error
+from bayesmed.conclusions.claim import Claim, as_claim
+from bayesmed.conclusions.summary import checked_width
+from bayesmed.core.contrasts import Contrasts
+from bayesmed.core.errors import ArgumentError, FitError
+from bayesmed.core.mapping import Array
+from bayesmed.core.tipping import claim_probability, tipping_correlation
+from bayesmed.fit.result import FitResult
+from bayesmed.priors.accept import coerce
+from bayesmed.study.points import Points, points
+
+RANGE = 0.9
+"""Correlations beyond this in size are set apart. Common practice, no source."""
+CAUTION = (
+    "A tipping correlation restates how precisely the path through the mediator is estimated; it does not say how "
+    "plausible such a correlation is. Plausibility comes from beliefs and from measured covariates."
+)
+
+
+@dataclass(frozen=True, eq=False)
+class TippingResult:
+    """Where each posterior draw crosses the claim's limit.
+
+    Attributes
+    ----------
+    claim : Claim
+    points : Points
+    """
+
+    result: FitResult
+    claim: Claim
+    points: Points
+    contrasts: Contrasts
+    ci_prob: float
+
+    @cached_property
+    def lines(self) -> tuple[Array, Array]:
+        """Constant and slope of the claim's effect in r, each of shape (point, draw)."""
+        return self.contrasts.line(self.claim.effect)
+
+    @cached_property
+    def crossings(self) -> Array:
+        """Draws of the tipping correlation, shape (point, draw); nan where no correlation matters."""
+        return tipping_correlation(*self.lines, self.claim.limit)
+
+    @property
+    def draws(self) -> xr.DataArray:
+        """Draws of the tipping correlation with dims chain, draw and one per moderator."""
+        chains, draws = self.result.shape
+        shape = (*self.points.shape, chains, draws)
+        values = np.moveaxis(self.crossings.reshape(shape), (-2, -1), (0, 1))
+        coords: dict[str, Any] = {"chain": np.arange(chains), "draw": np.arange(draws)}
+        coords.update({name: list(v) for name, v in self.points.dims.items()})
+        coords.update(self.points.scalars)
+        return xr.DataArray(values, coords=coords, dims=("chain", "draw", *self.points.dims), name="tipping_rho")
+
+    @cached_property
+    def table(self) -> pd.DataFrame:
+        """One row per moderator point.
+
+        Columns: the moderators; median, lower, upper of the tipping correlation; outside, the share of draws that
+        do not cross within ±0.9; toward_minus_one and toward_plus_one, the probabilities of the claim as the
+        correlation tends to -1 and +1, which no belief can exceed or undercut by being extreme.
+        """
+        tail = (1 - self.ci_prob) / 2
+        _, slope = self.lines
+        crossings = self.crossings
+        quantiles = (
+            np.nanquantile(crossings, [0.5, tail, 1 - tail], axis=1)
+            if np.any(slope)
+            else np.full((3, len(crossings)), np.nan)
+        )
+        holds_high = (slope < 0) if self.claim.direction == "above" else (slope > 0)
+        holds_low = (slope > 0) if self.claim.direction == "above" else (slope < 0)
+        columns: dict[str, Any] = {
+            name: [point[name] for point in self.points.values] for name in (*self.points.dims, *self.points.scalars)
+        }
+        columns.update(
+            median=quantiles[0],
+            lower=quantiles[1],
+            upper=quantiles[2],
+            outside=np.mean(~(np.abs(crossings) <= RANGE), axis=1),
+            toward_minus_one=holds_low.mean(axis=1),
+            toward_plus_one=holds_high.mean(axis=1),
+        )
+        return pd.DataFrame(columns)
+
+    def probability(self, prior: Any) -> pd.DataFrame:
+        """Return the probability of the claim under any belief, with its Monte Carlo error, per moderator point."""
+        belief = coerce(prior)
+        constant, slope = self.lines
+        by_draw = claim_probability(constant, slope, self.claim.limit, self.claim.direction, belief)
+        value, mcse = mean_with_error(by_draw, self.result)
+        columns: dict[str, Any] = {
+            name: [point[name] for point in self.points.values] for name in (*self.points.dims, *self.points.scalars)
+        }
+        return pd.DataFrame({**columns, "probability": value, "mcse": mcse})
+
+    def curve(self, moderator: str, values: Sequence[Any] | None = None) -> pd.DataFrame:
+        """Return the tipping correlation along a moderator: its values, median, lower and upper."""
+        observed = self.result.observed
+        if values is None:
+            column = observed.frame.get(moderator)
+            if column is None or not np.issubdtype(np.asarray(column).dtype, np.number):
+                raise ArgumentError(
+                    f"curve: moderator={moderator!r} is not a numeric column of this study; give values=[…]"
+                )
+            values = np.linspace(float(column.min()), float(column.max()), 41).tolist()
+        fixed = dict(self.points.scalars)
+        along = tipping(self.result, {**fixed, moderator: list(values)}, self.claim, self.ci_prob)
+        return along.table
+
+
+def tipping(result: FitResult, at: Any = None, claim: Claim | None = None, ci_prob: float = 0.95) -> TippingResult:
+    """Return the tipping distribution of a claim; see ``Fit.tipping``."""
+    if result.joint:
+        raise FitError(
+            "the data inform rho in this fit, so no single set of draws serves every rho and the tipping "
+            "distribution does not exist; use fit.rho_grid() or fit.compare(), which sample again for each belief"
+        )
+    stated = as_claim(claim)
+    if stated.effect == "total":
+        raise ArgumentError("claim: the total effect does not depend on rho, so nothing tips it")
+    chosen = points(result.observed, at)
+    return TippingResult(result, stated, chosen, result.contrasts(chosen), checked_width(ci_prob))

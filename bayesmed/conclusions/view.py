@@ -1,0 +1,140 @@
+"""One belief applied to a fit: effects, probabilities, intervals and moments at each moderator point."""
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from bayesmed.conclusions.accuracy import mean_with_error
+from bayesmed.conclusions.claim import Claim
+from bayesmed.core.contrasts import Contrasts
+from bayesmed.core.errors import ArgumentError, BeliefNeededError
+from bayesmed.core.mapping import Array
+from bayesmed.core.tipping import claim_probability, effect_moments, effect_quantiles
+from bayesmed.fit.result import FitResult
+from bayesmed.fit.sample import refit
+from bayesmed.priors.accept import coerce
+from bayesmed.study.points import Points
+
+
+@dataclass(frozen=True, eq=False)
+class View:
+    """A fit seen under one belief.
+
+    Attributes
+    ----------
+    result : FitResult
+    contrasts : Contrasts
+    belief : prior
+    rho : array of shape (draw,), or None
+        Draws that go with the contrasts one by one, where rho is informed; None where the belief is integrated
+        out through its distribution function.
+    """
+
+    result: FitResult
+    contrasts: Contrasts
+    belief: Any
+    rho: Array | None
+
+    def draws(self, effect: str) -> Array:
+        """Return draws of an effect, shape (point, draw), one correlation per draw."""
+        rho = self.rho
+        if rho is None:
+            own = self.belief is self.result.belief and "rho" in self.result.tree["posterior"]
+            rho = self.result.flat("rho") if own else np.asarray(self.belief.ppf(self.result.uniforms))
+        return self.contrasts.effect(effect, rho)
+
+    def probability(self, effect: str, claim: Claim) -> tuple[Array, Array]:
+        """Return the probability that an effect is beyond the claim's limit, and its Monte Carlo error.
+
+        Both of shape (point,).
+        """
+        return mean_with_error(self.probability_by_draw(effect, claim), self.result)
+
+    def probability_by_draw(self, effect: str, claim: Claim) -> Array:
+        """Return, per point and draw, the belief's probability that the claim's statement is true."""
+        if self.rho is None:
+            constant, slope = self.contrasts.line(effect)
+            return claim_probability(constant, slope, claim.limit, claim.direction, self.belief)
+        values = self.draws(effect)
+        true = values > claim.limit if claim.direction == "above" else values < claim.limit
+        return true.astype(float)
+
+    def moments(self, effect: str) -> tuple[Array, Array]:
+        """Return posterior mean and SD, each of shape (point,); infinite where they are."""
+        if self.rho is None:
+            return effect_moments(*self.contrasts.line(effect), self.belief)
+        values = self.draws(effect)
+        return values.mean(axis=1), values.std(axis=1)
+
+    def quantiles(self, effect: str, probabilities: Array) -> Array:
+        """Return posterior quantiles, shape (point, quantile)."""
+        constant, slope = self.contrasts.line(effect)
+        if self.rho is not None or not np.any(slope) or is_fixed(self.belief):
+            return np.quantile(self.draws(effect), probabilities, axis=1).T
+        return effect_quantiles(constant, slope, self.belief, probabilities, self.result.uniforms)
+
+
+def view(result: FitResult, points: Points, rho: Any = None) -> View:
+    """Return the fit seen under a belief.
+
+    Parameters
+    ----------
+    result : FitResult
+    points : Points
+    rho : prior, number or None
+        None is the fit's own belief.
+
+    Raises
+    ------
+    BeliefNeededError
+        If `rho` is None and the fit has no belief.
+    """
+    if rho is None:
+        if result.joint:
+            return View(result, result.contrasts(points), result.belief, result.flat("rho"))
+        if result.belief is None:
+            raise BeliefNeededError(
+                "this fit has no belief about rho, the correlation that unmeasured causes of mediator and outcome "
+                "leave; give rho=, for example rho=bm.Uniform(-0.3, 0.3) or rho=0.0, or use fit.under(prior)"
+            )
+        return View(result, result.contrasts(points), result.belief, None)
+    belief = coerce(rho)
+    if not result.joint:
+        return View(result, result.contrasts(points), belief, None)
+    if belief == result.belief:
+        return view(result, points)
+    refitted = refit(result, belief)
+    return View(refitted, refitted.contrasts(points), belief, refitted.flat("rho"))
+
+
+def beliefs_along_rho(rho: Any) -> list[float] | None:
+    """Return the fixed correlations of a list-like `rho`, or None if it is not a list of numbers."""
+    if not isinstance(rho, Iterable) or isinstance(rho, str | dict) or np.ndim(np.asarray(rho, dtype=object)) == 0:
+        return None
+    try:
+        values = np.asarray(list(rho), dtype=float)
+    except (TypeError, ValueError) as error:
+        raise ArgumentError(
+            f"rho={rho!r}: a list must hold numbers; use fit.compare({{label: prior}}) for several beliefs"
+        ) from error
+    if values.ndim != 1 or len(values) == 0 or not np.all(np.abs(values) < 1):
+        raise ArgumentError(f"rho={list(rho)!r} must be a list of numbers between -1 and 1, both excluded")
+    if len(set(values.tolist())) < len(values):
+        raise ArgumentError(f"rho={list(rho)!r} holds a value twice")
+    return [float(v) for v in values]
+
+
+def is_fixed(belief: Any) -> bool:
+    """True if the belief is a single value of rho."""
+    atoms = belief.atoms()
+    return len(atoms) == 1 and float(atoms[0][1]) == 1.0
+
+
+def effect_names(contrasts: Contrasts) -> tuple[str, ...]:
+    """Return the effects to show: five where exposure and mediator interact, otherwise three."""
+    scale = np.abs(contrasts.a).max(initial=0.0)
+    if np.allclose(contrasts.a, contrasts.a_pure, rtol=1e-9, atol=1e-9 * scale):
+        return ("indirect", "direct", "total")
+    return ("indirect", "direct", "total", "pure_indirect", "total_direct")

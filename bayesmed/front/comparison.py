@@ -1,0 +1,59 @@
+"""Comparison: several beliefs about rho side by side."""
+
+from typing import Any
+
+import pandas as pd
+
+from bayesmed.conclusions.claim import Claim
+from bayesmed.conclusions.comparison import ComparisonResult
+from bayesmed.front.shown import as_html, as_text
+
+
+class Comparison:
+    """Beliefs compared on the same draws, with verdicts on a claim; made by ``Fit.compare``."""
+
+    def __init__(self, result: ComparisonResult) -> None:
+        self._result = result
+
+    @property
+    def table(self) -> pd.DataFrame:
+        """Long table: prior, effect, moderators, mean, sd, lower, upper, probability, mcse, verdict.
+
+        The probability is that of the claim's limit for each effect; the verdict is given for the claim's effect.
+        """
+        return self._result.table
+
+    @property
+    def shifts(self) -> tuple[str, ...]:
+        """Sentences saying which belief changes which subgroup's verdict, the first belief being the reference."""
+        return self._result.shifts
+
+    @property
+    def claim(self) -> Claim:
+        """The claim that was judged."""
+        return self._result.claim
+
+    @property
+    def beliefs(self) -> dict[str, Any]:
+        """The priors compared, by label."""
+        return dict(self._result.beliefs)
+
+    def plot(self, **options: Any) -> Any:
+        """Draw the probability of the claim under every belief; see ``bayesmed.plots.beliefs``."""
+        from bayesmed.plots.beliefs import plot_beliefs
+
+        return plot_beliefs(self._result, **options)
+
+    def __repr__(self) -> str:
+        claimed = self._result.claimed.drop(columns="effect")
+        return "\n".join([self._heading(), "", as_text(claimed), "", *self.shifts])
+
+    def _repr_html_(self) -> str:
+        return as_html("\n".join([self._heading(), *self.shifts]), self._result.claimed.drop(columns="effect"))
+
+    def _heading(self) -> str:
+        claim = self.claim
+        return (
+            f"Claim: {claim}, held to require a probability of {claim.required:g}. Intervals hold "
+            f"{100 * self._result.ci_prob:g} %; mcse is the Monte Carlo error of the probability."
+        )

@@ -1,0 +1,165 @@
+"""Fit: draws of what the data identify, from which every conclusion follows under any belief."""
+
+from collections.abc import Mapping
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import pandas as pd
+import xarray as xr
+
+from bayesmed.conclusions.claim import Claim
+from bayesmed.conclusions.comparison import compare
+from bayesmed.conclusions.effects import effects
+from bayesmed.conclusions.summary import rho_grid, summary
+from bayesmed.conclusions.tipping import tipping
+from bayesmed.fit.result import FitResult
+from bayesmed.front.comparison import Comparison
+from bayesmed.front.shown import as_html, as_text
+from bayesmed.front.study import Study
+from bayesmed.front.tipping import Tipping
+
+if TYPE_CHECKING:
+    from bayesmed.priors import Prior
+
+
+class Fit:
+    """Posterior draws of a study; made by ``Study.fit``, ``Study.adopt`` or ``bayesmed.load``.
+
+    Where the likelihood is silent on rho, the same draws serve every belief about rho. In all conclusions:
+
+    at : dict, optional
+        Moderator values: a list becomes a dimension, a scalar a coordinate, ``{}`` averages over all rows, None
+        takes each moderator's default values.
+    rho : prior, number or list of numbers, optional
+        The belief to conclude under; None is the fit's own.
+    claim : Claim, optional
+        ``Claim("indirect", above=0)`` if left out.
+    """
+
+    def __init__(self, result: FitResult) -> None:
+        self.result = result
+
+    @property
+    def study(self) -> Study:
+        """The study that was fitted."""
+        return Study._of(self.result.observed)
+
+    @property
+    def posterior(self) -> xr.Dataset:
+        """Draws of alpha, gamma, sigma_m, tau and, with a belief, of rho, beta, sigma_y."""
+        return self.result.posterior
+
+    @property
+    def tree(self) -> xr.DataTree:
+        """The whole DataTree, with sampler statistics and, as attributes, seed, versions, formulas and priors."""
+        return self.result.tree
+
+    @property
+    def rho(self) -> "Prior | None":
+        """The fit's own belief about rho."""
+        belief: Prior | None = self.result.belief
+        return belief
+
+    @property
+    def how(self) -> str:
+        """How the draws were made, in one sentence."""
+        s = self.result.settings
+        kept = f"{s.chains} × {s.draws} draws"
+        if s.method == "exact":
+            return f"exact: {kept}, independent, under the reference prior (seed {s.random_seed})"
+        if s.method == "adopted":
+            return f"adopted: {kept} of a model of your own"
+        joint = "; rho is informed by the data and was sampled jointly" if self.result.joint else ""
+        return f"NUTS: {kept} after {s.tune} to adapt (seed {s.random_seed}){joint}"
+
+    def under(self, prior: Any) -> "Fit":
+        """Return a Fit under another belief about rho.
+
+        Where the data are silent on rho nothing is sampled. Where they inform it the model is sampled again, which
+        is said in :attr:`how`.
+        """
+        from bayesmed.fit.sample import refit
+        from bayesmed.priors import coerce
+
+        belief = coerce(prior)
+        if self.result.joint:
+            return Fit(refit(self.result, belief))
+        return Fit(self.result.with_belief(belief))
+
+    def effects(self, at: Any = None, rho: Any = None) -> xr.Dataset:
+        """Return draws of the effects, in units of the outcome.
+
+        Returns
+        -------
+        xarray.Dataset
+            indirect, direct, total, and pure_indirect and total_direct where exposure and mediator interact. Dims
+            chain, draw, then rho if a list was given, then one per listed moderator.
+        """
+        return effects(self.result, at, rho)
+
+    def summary(
+        self, at: Any = None, rho: Any = None, claim: Claim | None = None, ci_prob: float = 0.95
+    ) -> pd.DataFrame:
+        """Return a long table: effect, moderators, mean, sd, lower, upper, probability, mcse.
+
+        Means and SDs are exact over the belief and infinite where they are; intervals are equal-tailed;
+        probability is that of the claim's limit for each effect, and mcse its Monte Carlo error.
+        """
+        return summary(self.result, at, rho, claim, ci_prob)
+
+    def rho_grid(
+        self, rho: Any = None, at: Any = None, claim: Claim | None = None, ci_prob: float = 0.95
+    ) -> pd.DataFrame:
+        """Return the summary at each of a list of fixed rho, by default -0.9, -0.8, …, 0.9."""
+        return rho_grid(self.result, rho, at, claim, ci_prob)
+
+    def compare(
+        self,
+        beliefs: Mapping[str, Any],
+        at: Any = None,
+        claim: Claim | None = None,
+        ci_prob: float = 0.95,
+    ) -> Comparison:
+        """Compare beliefs about rho, given as a dict of label → prior, on the same draws."""
+        return Comparison(compare(self.result, beliefs, at, claim, ci_prob))
+
+    def tipping(self, at: Any = None, claim: Claim | None = None, ci_prob: float = 0.95) -> Tipping:
+        """Return the distribution of the rho at which the claim tips."""
+        return Tipping(tipping(self.result, at, claim, ci_prob))
+
+    def save(self, path: str | Path) -> Path:
+        """Write the fit to a NetCDF file, whole or not at all, and return its path.
+
+        The file holds the rows used (the study's columns only), since other moderator values need them: treat it as
+        you treat the data.
+        """
+        from bayesmed.fit.store import save
+
+        return save(self.result, path)
+
+    def __repr__(self) -> str:
+        sentence, table = self._answer()
+        return "\n".join([repr(self.study), f"  draws              {self.how}", "", sentence, as_text(table)])
+
+    def _repr_html_(self) -> str:
+        sentence, table = self._answer()
+        return as_html(f"{sentence}\n{self.how}", table)
+
+    def _answer(self) -> tuple[str, pd.DataFrame]:
+        if self.result.belief is None:
+            return (
+                "No belief about rho yet: the total effect does not depend on it, and every other effect does. "
+                "Effects at rho = 0, that is with nothing left out:",
+                self.summary(rho=0.0),
+            )
+        return (
+            f"Effects under the belief {self.result.belief!r}, probability of an effect > 0:",
+            self.summary(),
+        )
+
+
+def load(path: str | Path) -> Fit:
+    """Return a fit that ``Fit.save`` wrote."""
+    from bayesmed.fit import store
+
+    return Fit(store.load(path))

@@ -1,0 +1,60 @@
+"""Tipping: at which residual correlation the draws cross the claim's limit."""
+
+from collections.abc import Sequence
+from typing import Any
+
+import pandas as pd
+import xarray as xr
+
+from bayesmed.conclusions.claim import Claim
+from bayesmed.conclusions.tipping import CAUTION, TippingResult
+from bayesmed.front.shown import as_html, as_text
+
+
+class Tipping:
+    """The tipping distribution of a claim; made by ``Fit.tipping``."""
+
+    def __init__(self, result: TippingResult) -> None:
+        self._result = result
+
+    @property
+    def claim(self) -> Claim:
+        """The claim that tips."""
+        return self._result.claim
+
+    @property
+    def draws(self) -> xr.DataArray:
+        """Draws of the correlation at which each posterior draw crosses the claim's limit.
+
+        Dims chain, draw and one per moderator; nan where no correlation matters to a draw.
+        """
+        return self._result.draws
+
+    @property
+    def table(self) -> pd.DataFrame:
+        """One row per moderator point.
+
+        Columns: median, lower and upper of the tipping correlation; outside, the share of draws that do not cross
+        within ±0.9; toward_minus_one and toward_plus_one, the probability of the claim as rho tends to -1 and +1.
+        """
+        return self._result.table
+
+    def probability(self, prior: Any) -> pd.DataFrame:
+        """Return the probability of the claim under any prior, with its Monte Carlo error, per moderator point."""
+        return self._result.probability(prior)
+
+    def curve(self, moderator: str, values: Sequence[Any] | None = None) -> pd.DataFrame:
+        """Return the tipping correlation along a moderator, at `values` or over its observed range."""
+        return self._result.curve(moderator, values)
+
+    def __repr__(self) -> str:
+        return "\n".join([self._heading(), "", as_text(self.table), "", CAUTION])
+
+    def _repr_html_(self) -> str:
+        return as_html(f"{self._heading()}\n{CAUTION}", self.table)
+
+    def _heading(self) -> str:
+        return (
+            f"Tipping correlation of the claim {self.claim}: the rho at which a posterior draw crosses the limit "
+            f"(median and {100 * self._result.ci_prob:g} % interval)."
+        )
