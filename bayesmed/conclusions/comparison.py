@@ -29,6 +29,8 @@ class ComparisonResult:
     beliefs : dict of str to prior
     claim : Claim
     points : Points
+    routes : dict of str to str
+        How each belief was brought to draws in which rho is informed; empty where one set of draws serves all.
     """
 
     result: FitResult
@@ -37,6 +39,7 @@ class ComparisonResult:
     claim: Claim
     points: Points
     ci_prob: float
+    routes: dict[str, str]
 
     @cached_property
     def claimed(self) -> pd.DataFrame:
@@ -72,9 +75,11 @@ def compare(
             raise ArgumentError(f"compare: label {label!r} must be text that is not blank")
     accepted = {label: coerce(prior) for label, prior in beliefs.items()}
     chosen, stated, width = points(result.observed, at), as_claim(claim), checked_width(ci_prob)
-    parts = []
+    parts, routes = [], {}
     for label, belief in accepted.items():
         seen = view(result, chosen, belief)
+        if seen.route:
+            routes[label] = seen.route
         if stated.effect not in effect_names(seen.contrasts):
             raise ArgumentError(
                 f"claim: the {stated.effect!r} effect equals the "
@@ -87,7 +92,7 @@ def compare(
     joined = pd.concat(parts, ignore_index=True)
     judged = zip(joined["effect"], joined["probability"], joined["mcse"], strict=True)
     joined["verdict"] = [stated.verdict(p, e) if effect == stated.effect else "" for effect, p, e in judged]
-    return ComparisonResult(result, joined, accepted, stated, chosen, width)
+    return ComparisonResult(result, joined, accepted, stated, chosen, width, routes)
 
 
 def _shift(rows: pd.DataFrame, reference: str, where: str) -> str:

@@ -6,7 +6,7 @@ import numpy as np
 import pandas as pd
 import xarray as xr
 
-from bayesmed.conclusions.view import beliefs_along_rho, effect_names, view
+from bayesmed.conclusions.view import beliefs_along_rho, effect_names, view_by_draw
 from bayesmed.fit.result import FitResult
 from bayesmed.study.points import Points, points
 
@@ -36,7 +36,7 @@ def effects(result: FitResult, at: Any = None, rho: Any = None) -> xr.Dataset:
 
 
 def _one(result: FitResult, chosen: Points, rho: Any) -> xr.Dataset:
-    seen = view(result, chosen, rho)
+    seen = view_by_draw(result, chosen, rho)
     chains, draws = result.shape
     dims = ("chain", "draw", *chosen.dims)
     coords: dict[str, Any] = {"chain": np.arange(chains), "draw": np.arange(draws)}

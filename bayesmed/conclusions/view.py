@@ -12,8 +12,9 @@ from bayesmed.core.contrasts import Contrasts
 from bayesmed.core.errors import ArgumentError, BeliefNeededError
 from bayesmed.core.mapping import Array
 from bayesmed.core.tipping import claim_probability, effect_moments, effect_quantiles
+from bayesmed.fit.make import refit
 from bayesmed.fit.result import FitResult
-from bayesmed.fit.sample import refit
+from bayesmed.fit.reweight import reweight
 from bayesmed.priors.accept import coerce
 from bayesmed.study.points import Points
 
@@ -30,12 +31,18 @@ class View:
     rho : array of shape (draw,), or None
         Draws that go with the contrasts one by one, where rho is informed; None where the belief is integrated
         out through its distribution function.
+    weights : array of shape (draw,), or None
+        Importance weights that turn the draws into those under the belief; None where all weigh the same.
+    route : str
+        How the belief was brought to the draws, in words; empty where nothing had to be done.
     """
 
     result: FitResult
     contrasts: Contrasts
     belief: Any
     rho: Array | None
+    weights: Array | None = None
+    route: str = ""
 
     def draws(self, effect: str) -> Array:
         """Return draws of an effect, shape (point, draw), one correlation per draw."""
@@ -50,7 +57,7 @@ class View:
 
         Both of shape (point,).
         """
-        return mean_with_error(self.probability_by_draw(effect, claim), self.result)
+        return mean_with_error(self.probability_by_draw(effect, claim), self.result, self.weights)
 
     def probability_by_draw(self, effect: str, claim: Claim) -> Array:
         """Return, per point and draw, the belief's probability that the claim's statement is true."""
@@ -66,11 +73,16 @@ class View:
         if self.rho is None:
             return effect_moments(*self.contrasts.line(effect), self.belief)
         values = self.draws(effect)
-        return values.mean(axis=1), values.std(axis=1)
+        mean = np.average(values, axis=1, weights=self.weights)
+        return mean, np.sqrt(np.average((values - mean[:, None]) ** 2, axis=1, weights=self.weights))
 
     def quantiles(self, effect: str, probabilities: Array) -> Array:
         """Return posterior quantiles, shape (point, quantile)."""
         constant, slope = self.contrasts.line(effect)
+        if self.weights is not None:
+            draws = self.draws(effect)
+            rows = [np.quantile(d, probabilities, weights=self.weights, method="inverted_cdf") for d in draws]
+            return np.stack(rows)
         if self.rho is not None or not np.any(slope) or is_fixed(self.belief):
             return np.quantile(self.draws(effect), probabilities, axis=1).T
         return effect_quantiles(constant, slope, self.belief, probabilities, self.result.uniforms)
@@ -105,8 +117,26 @@ def view(result: FitResult, points: Points, rho: Any = None) -> View:
         return View(result, result.contrasts(points), belief, None)
     if belief == result.belief:
         return view(result, points)
+    weighing = reweight(result, belief) if result.settings.learn else None
+    if weighing is not None and weighing.usable:
+        route = f"draws reweighted (Pareto k = {weighing.shape:.2f}, worth {weighing.effective:.0f} draws)"
+        return View(result, result.contrasts(points), belief, result.flat("rho"), weighing.weights, route)
+    return _resampled(result, points, belief, weighing)
+
+
+def view_by_draw(result: FitResult, points: Points, rho: Any = None) -> View:
+    """Return the same as :func:`view` with draws that all weigh the same, sampled again if need be."""
+    if rho is None or not result.joint:
+        return view(result, points, rho)
+    belief = coerce(rho)
+    return view(result, points) if belief == result.belief else _resampled(result, points, belief, None)
+
+
+def _resampled(result: FitResult, points: Points, belief: Any, weighing: Any) -> View:
     refitted = refit(result, belief)
-    return View(refitted, refitted.contrasts(points), belief, refitted.flat("rho"))
+    why = "" if weighing is None else f" (weights could not be trusted: Pareto k = {weighing.shape:.2f})"
+    rho = refitted.flat("rho")
+    return View(refitted, refitted.contrasts(points), belief, rho, route=f"sampled again{why}")
 
 
 def beliefs_along_rho(rho: Any) -> list[float] | None:

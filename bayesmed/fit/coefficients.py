@@ -6,7 +6,7 @@ Written as a quadratic form in ``D_c theta`` it does not depend on units, origin
 with an explicit prior leave it, and the others keep their marginal.
 """
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from typing import Any
 
@@ -47,7 +47,9 @@ class CoefficientPrior:
         return np.asarray(solve_triangular(self.whiten, np.eye(len(self.centre))))
 
 
-def coefficient_prior(regression: Regression, terms: tuple[str, ...], explicit: Mapping[str, Any]) -> CoefficientPrior:
+def coefficient_prior(
+    regression: Regression, terms: tuple[str, ...], explicit: Mapping[str, Any], elsewhere: Iterable[str] = ()
+) -> CoefficientPrior:
     """Return the prior of a regression's coefficients.
 
     Parameters
@@ -57,10 +59,13 @@ def coefficient_prior(regression: Regression, terms: tuple[str, ...], explicit: 
         Names of the coefficients, in the order of the design's columns.
     explicit : mapping of str to prior
         Terms with a prior of their own, all of them in `terms`.
+    elsewhere : iterable of str
+        Terms that leave the default because their prior is stated on another scale, and stands elsewhere.
     """
     chosen = [(terms.index(name), prior) for name, prior in explicit.items()]
     scale = WIDTH * regression.response_sd * np.sqrt(regression.rows)
-    root = _marginal_root(regression.centred_factor / scale, [i for i, _ in chosen])
+    leaving = [i for i, _ in chosen] + [terms.index(name) for name in elsewhere]
+    root = _marginal_root(regression.centred_factor / scale, leaving)
     p = regression.terms
     s = regression.residual_sd
     rows = [regression.factor[:p, :p] / s, root]

@@ -57,7 +57,7 @@ def watched(result: FitResult) -> dict[str, Array]:
             continue
         values = posterior[name].to_numpy()
         if values.ndim == 2:
-            if values.std() > 0:
+            if np.ptp(values) > 0:
                 found[name] = values
             continue
         for k, term in enumerate(posterior[posterior[name].dims[-1]].to_numpy()):
@@ -72,7 +72,7 @@ def watched(result: FitResult) -> dict[str, Array]:
     for name in ("indirect", "direct"):
         for point, value in zip(default.values, contrasts.effect(name, rho), strict=True):
             where = ", ".join(f"{k} = {v}" for k, v in point.items())
-            if value.std() > 0:
+            if np.ptp(value) > 0:
                 found[f"the {name} effect" + (f" at {where}" if where else "")] = value.reshape(result.shape)
     return found
 

@@ -24,6 +24,10 @@ def build_model(
 ) -> Any:
     """Return the ``pm.Model`` of both regressions from sufficient statistics.
 
+    Priors on the structural scale are densities of ``beta`` and ``sigma_y``; as the free variables are ``gamma`` and
+    ``tau``, the Jacobian ``|d sigma_y / d tau| = (1 - rho²)^(-1/2)`` goes with a prior of ``sigma_y``, and that of
+    ``beta`` is one.
+
     Free variables are ``alpha`` (mediator_term), ``sigma_m``, ``gamma`` (outcome_term), ``tau`` and, with a belief,
     ``rho``; then ``beta`` (outcome_term) and ``sigma_y``, the structural parameters, are deterministic. Where the
     likelihood is silent on ``rho`` no likelihood term contains it.
@@ -45,8 +49,13 @@ def build_model(
         sigma_m = _scale("sigma_m", statistics.mediator, coefficients.sigma_mediator)
         alpha_prior = coefficient_prior(statistics.mediator, mediator_terms, coefficients.mediator)
         alpha = _coefficients("alpha", alpha_prior, "mediator_term")
-        tau = _scale("tau", statistics.outcome, coefficients.sigma_outcome)
-        gamma_prior = coefficient_prior(statistics.outcome, outcome_terms, coefficients.outcome)
+        structural = coefficients.scale == "structural"
+        if structural and coefficients.sigma_outcome is not None:
+            tau = pm.HalfFlat("tau", initval=statistics.outcome.residual_sd)
+        else:
+            tau = _scale("tau", statistics.outcome, coefficients.sigma_outcome)
+        own, elsewhere = ({}, coefficients.outcome) if structural else (coefficients.outcome, {})
+        gamma_prior = coefficient_prior(statistics.outcome, outcome_terms, own, elsewhere)
         gamma = _coefficients("gamma", gamma_prior, "outcome_term")
         _rows("mediator_rows", statistics.mediator, alpha, sigma_m)
         if rho is None:
@@ -58,7 +67,15 @@ def build_model(
         _rows("outcome_rows", statistics.informed_outcome, pt.concatenate([gamma, *residual]), tau)
         beta = structural_outcome(gamma, alpha, sigma_m, tau, correlation, statistics.alignment)
         pm.Deterministic("beta", beta, dims="outcome_term")
-        pm.Deterministic("sigma_y", sigma_outcome(correlation, tau))
+        sigma_y = pm.Deterministic("sigma_y", sigma_outcome(correlation, tau))
+        if structural and coefficients.informs_rho:
+            density = pt.as_tensor(0.0)
+            for name, prior in coefficients.outcome.items():
+                density += pm.logp(prior.to_pymc_dist(), beta[outcome_terms.index(name)])
+            if coefficients.sigma_outcome is not None:
+                density += pm.logp(coefficients.sigma_outcome.to_pymc_dist(), sigma_y)
+                density -= 0.5 * pt.log1p(-(correlation**2))
+            pm.Potential("structural_prior", density)
     return model
 
 

@@ -28,6 +28,8 @@ class Settings:
         "nuts", "exact" or "adopted".
     draws, tune, chains : int
     random_seed : int
+    learn : bool
+        False where rho was held at its prior although the model informs it.
     """
 
     method: str
@@ -35,6 +37,7 @@ class Settings:
     tune: int
     chains: int
     random_seed: int
+    learn: bool = True
 
 
 @dataclass(frozen=True, eq=False)
@@ -64,6 +67,11 @@ class FitResult:
     coefficients: Coefficients
     settings: Settings
     memory: dict[Any, Any] = field(default_factory=dict, repr=False)
+
+    def replaced(self, **changes: Any) -> "FitResult":
+        """Return a copy with some attributes changed, that shares compiled models and nothing else in memory."""
+        shared = {"movable": self.memory["movable"]} if "movable" in self.memory else {}
+        return dataclasses.replace(self, memory=shared, **changes)
 
     @property
     def posterior(self) -> xr.Dataset:

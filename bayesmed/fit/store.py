@@ -82,7 +82,8 @@ def load(path: str | Path) -> FitResult:
         moderators=study["moderators"],
     )
     attributes = tree.attrs
-    settings = Settings(attributes["method"], *(int(attributes[k]) for k in ("draws", "tune", "chains", "random_seed")))
+    draws, tune, chains, seed = (int(attributes[k]) for k in ("draws", "tune", "chains", "random_seed"))
+    settings = Settings(attributes["method"], draws, tune, chains, seed, bool(attributes["learn"]))
     spec = json.loads(attributes["belief"])
     belief = None if spec is None else from_spec(spec, place="belief")
     coefficients = _coefficients(json.loads(attributes["coefficients"]))

@@ -46,10 +46,14 @@ class Comparison:
 
     def __repr__(self) -> str:
         claimed = self._result.claimed.drop(columns="effect")
-        return "\n".join([self._heading(), "", as_text(claimed), "", *self.shifts])
+        return "\n".join([self._heading(), "", as_text(claimed), "", *self.shifts, *self._routes()])
 
     def _repr_html_(self) -> str:
-        return as_html("\n".join([self._heading(), *self.shifts]), self._result.claimed.drop(columns="effect"))
+        said = [self._heading(), *self.shifts, *self._routes()]
+        return as_html("\n".join(said), self._result.claimed.drop(columns="effect"))
+
+    def _routes(self) -> list[str]:
+        return [f"{label}: {route}." for label, route in self._result.routes.items()]
 
     def _heading(self) -> str:
         claim = self.claim

@@ -9,7 +9,11 @@ import xarray as xr
 
 from bayesmed.conclusions.claim import Claim
 from bayesmed.conclusions.comparison import compare
+from bayesmed.conclusions.direction import direction
 from bayesmed.conclusions.effects import effects
+from bayesmed.conclusions.implied_prior import implied_prior
+from bayesmed.conclusions.leaning import leaning
+from bayesmed.conclusions.movement import Movement, movement
 from bayesmed.conclusions.summary import rho_grid, summary
 from bayesmed.conclusions.tipping import tipping
 from bayesmed.fit.result import FitResult
@@ -69,7 +73,9 @@ class Fit:
             return f"exact: {kept}, independent, under the reference prior (seed {s.random_seed})"
         if s.method == "adopted":
             return f"adopted: {kept} of a model of your own"
-        joint = "; rho is informed by the data and was sampled jointly" if self.result.joint else ""
+        joint = ""
+        if self.result.joint:
+            joint = "; rho is informed and " + ("was sampled jointly" if s.learn else "was held at its prior")
         return f"NUTS: {kept} after {s.tune} to adapt (seed {s.random_seed}){joint}"
 
     def under(self, prior: Any) -> "Fit":
@@ -78,7 +84,7 @@ class Fit:
         Where the data are silent on rho nothing is sampled. Where they inform it the model is sampled again, which
         is said in :attr:`how`.
         """
-        from bayesmed.fit.sample import refit
+        from bayesmed.fit.make import refit
         from bayesmed.priors import coerce
 
         belief = coerce(prior)
@@ -126,6 +132,46 @@ class Fit:
     def tipping(self, at: Any = None, claim: Claim | None = None, ci_prob: float = 0.95) -> Tipping:
         """Return the distribution of the rho at which the claim tips."""
         return Tipping(tipping(self.result, at, claim, ci_prob))
+
+    def movement(self) -> Movement:
+        """Return how far rho moved from prior to posterior, with a distance and what moved it."""
+        return movement(self.result)
+
+    def implied_prior(self, at: Any = None, claim: Claim | None = None, draws: int = 20_000) -> pd.DataFrame:
+        """Return quantiles of the indirect effect, and the claim's probability, under the prior alone.
+
+        Drawn from the priors of coefficients, residual SDs and rho, with nothing of the data but its scale.
+        """
+        return implied_prior(self.result, at, claim, draws)
+
+    def leaning(self, at: Any = None, rho: Any = None) -> pd.DataFrame:
+        """Return whether effects lean on the coefficient priors, by power-scaling (not a verdict on rho).
+
+        Columns: effect; coefficient_priors and rows, the sensitivity to each; leans_on_prior.
+        """
+        return leaning(self.result, at, rho)
+
+    def direction(self) -> Any:
+        """Return the sign of the exposure's effect on the mediator per draw: an array of -1, 0 and 1."""
+        return direction(self.result)
+
+    def report(
+        self,
+        folder: str | Path,
+        beliefs: Mapping[str, Any] | None = None,
+        at: Any = None,
+        claim: Claim | None = None,
+        ci_prob: float = 0.95,
+        title: str | None = None,
+    ) -> Path:
+        """Write a folder with a summary in sentences, the tables as CSV and a picture, and return its path.
+
+        Beliefs are those of ``bayesmed.priors.panel()`` if left out. A folder that bayesmed wrote is replaced, any
+        other that is not empty is refused.
+        """
+        from bayesmed.report.folder import write_report
+
+        return write_report(self.result, folder, beliefs=beliefs, at=at, claim=claim, ci_prob=ci_prob, title=title)
 
     def save(self, path: str | Path) -> Path:
         """Write the fit to a NetCDF file, whole or not at all, and return its path.

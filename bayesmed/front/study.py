@@ -3,7 +3,7 @@
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any, Literal
 
-from bayesmed.core.errors import InformedWarning
+from bayesmed.core.errors import DataWarning, InformedWarning
 from bayesmed.study.audit import Audit, audit
 from bayesmed.study.observe import Observed, observe
 
@@ -88,8 +88,8 @@ class Study:
         -------
         pymc.Model
         """
+        from bayesmed.fit.make import checked_coefficients
         from bayesmed.fit.model import build_model
-        from bayesmed.fit.sample import checked_coefficients
         from bayesmed.fit.statistics import reduce_study
         from bayesmed.priors import coerce
 
@@ -111,6 +111,7 @@ class Study:
         chains: int = 4,
         random_seed: int | None = None,
         coefficients: "Coefficients | None" = None,
+        learn: bool = True,
         progressbar: bool = True,
     ) -> "Fit":
         """Sample what the data identify.
@@ -127,7 +128,9 @@ class Study:
         random_seed : int, optional
             The same seed gives the same draws; a new one is made and recorded if left out.
         coefficients : Coefficients, optional
-            Priors by term name in place of the default.
+            Priors by term name in place of the default. On the structural scale they inform rho.
+        learn : bool
+            False holds the posterior of rho at its prior where formulas or priors would inform it.
         progressbar : bool
             False is quiet.
 
@@ -144,7 +147,8 @@ class Study:
         """
         import warnings
 
-        from bayesmed.fit.sample import fit_study, informed_message
+        from bayesmed.fit.informants import informed_message
+        from bayesmed.fit.make import fit_study
         from bayesmed.front.fit import Fit
         from bayesmed.priors import coerce
 
@@ -157,10 +161,18 @@ class Study:
             chains=chains,
             random_seed=random_seed,
             coefficients=coefficients,
+            learn=learn,
             progressbar=progressbar,
         )
-        if result.statistics.informed:
-            warnings.warn(InformedWarning(informed_message(result)), stacklevel=2)
+        if result.statistics.informed and learn:
+            message = informed_message(result.observed, result.statistics, result.coefficients)
+            warnings.warn(InformedWarning(message), stacklevel=2)
+        for identifier in result.observed.identifiers:
+            message = (
+                f"column {identifier.name!r} looks like an identifier and repeats (a value in up to {identifier.most} "
+                "rows); rows are taken as independent, and intervals are too narrow if they are not"
+            )
+            warnings.warn(DataWarning(message), stacklevel=2)
         fit = Fit(result)
         if progressbar:
             print(fit.how)
@@ -185,7 +197,7 @@ class Study:
         -------
         Fit
         """
-        from bayesmed.fit.sample import adopt
+        from bayesmed.fit.adopt import adopt
         from bayesmed.front.fit import Fit
         from bayesmed.priors import coerce
 

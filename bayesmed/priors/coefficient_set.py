@@ -96,6 +96,11 @@ sigma_mediator=HalfNormal(scale=2.0), sigma_outcome=None, scale='identified')
         if self.scale not in SCALES:
             raise ArgumentError(f"Coefficients: scale is {self.scale!r}; it must be 'identified' or 'structural'")
 
+    @property
+    def informs_rho(self) -> bool:
+        """True if a prior is about the structural outcome equation, through which ρ learns from the data."""
+        return self.scale == "structural" and bool(self.outcome or self.sigma_outcome)
+
     def check(self, mediator_terms: Iterable[str], outcome_terms: Iterable[str]) -> None:
         """Raise ArgumentError if a prior is given for a term that its equation does not have."""
         for equation, priors, terms in (
