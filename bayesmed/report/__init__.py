@@ -1,0 +1,1 @@
+"""Reports: the study file that asks for one, what is found, tables, summary page, and the folder."""

@@ -1,0 +1,100 @@
+"""Nothing overlaps, nothing is cut off: at 1, 3 and 8 moderator values, 2 and 12 beliefs, short labels and long."""
+
+import itertools
+from collections.abc import Callable
+from typing import Any
+
+import pytest
+from matplotlib.figure import Figure
+from matplotlib.transforms import Bbox
+
+import bayesmed as bm
+from bayesmed.conclusions.comparison import compare
+from bayesmed.fit.result import FitResult
+from bayesmed.plots.beliefs import plot_beliefs
+from bayesmed.plots.effect_by_rho import plot_effect_by_rho
+from bayesmed.plots.picture import Picture
+
+Drawn = Callable[[Figure], dict[str, list[Bbox]]]
+
+POINTS: dict[int, dict[str, Any]] = {
+    1: {},
+    3: {"confidence": [4, 6, 8]},
+    8: {"confidence": [2, 3, 4, 5, 6, 7, 8, 9]},
+}
+PRIORS = (
+    bm.PointMass(0.0), bm.Uniform(0, 0.5), bm.LKJ(1), bm.LKJ(8), bm.FisherNormal(0.2, 0.1), bm.PointMass(-0.6),
+    bm.FisherNormal(-0.2, 0.1), bm.TruncatedNormal(0.5, 0.1), bm.Uniform(-0.9, 0.9), bm.StretchedBeta(0.6, 0.6),
+    bm.StretchedBeta(4, 2), bm.Uniform(-0.3, 0.3),
+)  # fmt: skip
+SHORT = [f"b{k}" for k in range(len(PRIORS))]
+LONG = [
+    f"belief {k}: what the second reviewer of the grant application wrote about motivation in 2024"
+    for k in range(len(PRIORS) - 2)
+] + ["Ünbröken" * 12, "<b>$\\frac{1}{2}$</b> _a_ \n new line, \"quoted\", 50 % & more"]  # fmt: skip
+
+
+def picture(kind: str, knee: FitResult, points: int, beliefs: int, labels: list[str], claim: bm.Claim) -> Picture:
+    chosen = dict(zip(labels[-beliefs:], PRIORS[:beliefs], strict=True))
+    if kind == "effect_by_rho":
+        return plot_effect_by_rho(knee, chosen, POINTS[points], claim)
+    return plot_beliefs(compare(knee, chosen, POINTS[points], claim))
+
+
+def assert_clean(figure: Figure, boxes: dict[str, list[Bbox]]) -> None:
+    flat = [(text, box) for text, several in boxes.items() for box in several]
+    assert flat
+    edge = figure.bbox
+    for text, box in flat:
+        inside = box.x0 >= -1 and box.y0 >= -1 and box.x1 <= edge.width + 1 and box.y1 <= edge.height + 1
+        assert inside, f"{text!r} is cut off"
+    for (text, box), (other, against) in itertools.combinations(flat, 2):
+        # Boxes of lines reach a little above and below their letters: a pixel either way is no overlap.
+        apart = (
+            box.x1 <= against.x0 + 1 or against.x1 <= box.x0 + 1 or box.y1 <= against.y0 + 1 or against.y1 <= box.y0 + 1
+        )
+        assert apart, f"{text!r} overlaps {other!r}"
+
+
+@pytest.mark.parametrize("kind", ["effect_by_rho", "beliefs"])
+@pytest.mark.parametrize("points", [1, 3, 8])
+@pytest.mark.parametrize("beliefs", [2, 12])
+@pytest.mark.parametrize("labels", [SHORT, LONG], ids=["short", "long"])
+def test_no_text_overlaps_or_is_cut_off(
+    knee: FitResult, drawn: Drawn, kind: str, points: int, beliefs: int, labels: list[str]
+) -> None:
+    made = picture(kind, knee, points, beliefs, labels, bm.Claim())
+    assert_clean(made.figure, drawn(made.figure))
+
+
+@pytest.mark.parametrize("kind", ["effect_by_rho", "beliefs"])
+def test_a_long_claim_fits(knee: FitResult, drawn: Drawn, kind: str) -> None:
+    made = picture(kind, knee, 3, 2, SHORT, bm.Claim("indirect", below=-12345.678, required=0.975))
+    assert_clean(made.figure, drawn(made.figure))
+
+
+def test_the_check_itself_sees_an_overlap_and_a_cut(drawn: Drawn) -> None:
+    overlapping, cut = Figure(), Figure()
+    overlapping.text(0.5, 0.5, "one")
+    overlapping.text(0.51, 0.5, "two")
+    cut.text(0.99, 0.5, "far out")
+    for figure, words in ((overlapping, "'one' overlaps 'two'"), (cut, "'far out' is cut off")):
+        with pytest.raises(AssertionError, match=words):
+            assert_clean(figure, drawn(figure))
+
+
+@pytest.mark.parametrize("kind", ["effect_by_rho", "beliefs"])
+def test_every_label_is_drawn_whole_and_never_as_mathematics(knee: FitResult, drawn: Drawn, kind: str) -> None:
+    made = picture(kind, knee, 3, 12, LONG, bm.Claim())
+    lines = "".join("".join(text.split()) for text in drawn(made.figure))
+    for label in LONG:
+        assert "".join(label.split())[:20] in lines
+        assert "".join(label.split())[-20:] in lines
+
+
+def test_a_users_style_does_not_change_what_is_measured(knee: FitResult, drawn: Drawn) -> None:
+    import matplotlib
+
+    with matplotlib.rc_context({"font.size": 30, "axes.titlesize": 40, "lines.linewidth": 9, "axes.grid": True}):
+        made = picture("beliefs", knee, 8, 12, LONG, bm.Claim())
+        assert_clean(made.figure, drawn(made.figure))
