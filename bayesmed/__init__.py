@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from bayesmed.priors import (
         LKJ,
         BetaShare,
+        ByGroup,
         Coefficients,
         Exponential,
         FisherNormal,
@@ -50,6 +51,7 @@ _HOME = {
         (
             "LKJ",
             "BetaShare",
+            "ByGroup",
             "Coefficients",
             "Exponential",
             "FisherNormal",
@@ -76,6 +78,7 @@ _MODULES = {"errors": "bayesmed.core.errors", "priors": "bayesmed.priors"}
 __all__ = [
     "LKJ",
     "BetaShare",
+    "ByGroup",
     "Claim",
     "Coefficients",
     "Comparison",

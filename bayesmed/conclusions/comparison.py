@@ -13,7 +13,7 @@ from bayesmed.conclusions.view import effect_names, view
 from bayesmed.conclusions.words import listed, point_text, probability_text
 from bayesmed.core.errors import ArgumentError
 from bayesmed.fit.result import FitResult
-from bayesmed.priors.accept import coerce
+from bayesmed.priors.by_group import as_belief
 from bayesmed.study.points import Points, points
 
 
@@ -73,7 +73,7 @@ def compare(
     for label in beliefs:
         if not isinstance(label, str) or not label.strip():
             raise ArgumentError(f"compare: label {label!r} must be text that is not blank")
-    accepted = {label: coerce(prior) for label, prior in beliefs.items()}
+    accepted = {label: as_belief(prior) for label, prior in beliefs.items()}
     chosen, stated, width = points(result.observed, at), as_claim(claim), checked_width(ci_prob)
     parts, routes = [], {}
     for label, belief in accepted.items():

@@ -8,6 +8,7 @@ import pandas as pd
 from bayesmed.conclusions.claim import Claim, as_claim
 from bayesmed.core.contrasts import linear_contrasts
 from bayesmed.core.errors import ArgumentError
+from bayesmed.fit.grouped import refuse_grouped
 from bayesmed.fit.prior_draws import prior_draws
 from bayesmed.fit.result import FitResult
 from bayesmed.study.counterfactual import linear_in_mediator, linear_moments
@@ -18,6 +19,7 @@ QUANTILES = {"lower": 0.025, "lower_half": 0.25, "median": 0.5, "upper_half": 0.
 
 def implied_prior(result: FitResult, at: Any = None, claim: Claim | None = None, draws: int = 20_000) -> pd.DataFrame:
     """Return quantiles of the indirect effect under the prior alone; see ``Fit.implied_prior``."""
+    refuse_grouped(result, "implied_prior")
     stated = as_claim(claim)
     if "indirect" not in stated.effect:
         raise ArgumentError(

@@ -16,6 +16,7 @@ from bayesmed.core.errors import ArgumentError
 from bayesmed.core.mapping import Array
 from bayesmed.core.regression import Regression
 from bayesmed.fit.coefficients import SIGMA_LOG_SD, coefficient_prior
+from bayesmed.fit.grouped import refuse_grouped
 from bayesmed.fit.result import FitResult
 
 THRESHOLD = 0.05
@@ -26,6 +27,7 @@ def leaning(result: FitResult, at: Any = None, rho: Any = None) -> pd.DataFrame:
     """Return how much each effect moves with the coefficient priors and the likelihood; see ``Fit.leaning``."""
     from arviz_stats import psense_summary
 
+    refuse_grouped(result, "leaning")
     if result.settings.method == "exact" or result.settings.method == "adopted":
         raise ArgumentError(
             f"leaning: a fit by method={result.settings.method!r} has no coefficient prior of this package to scale"

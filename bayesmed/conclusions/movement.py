@@ -6,6 +6,7 @@ import numpy as np
 
 from bayesmed.conclusions.accuracy import mean_with_error
 from bayesmed.core.errors import BeliefNeededError
+from bayesmed.fit.grouped import refuse_grouped
 from bayesmed.fit.informants import data_informants, prior_informants
 from bayesmed.fit.result import FitResult
 
@@ -48,6 +49,7 @@ class Movement:
 
 def movement(result: FitResult) -> Movement:
     """Return how far rho moved, and why; see ``Fit.movement``."""
+    refuse_grouped(result, "movement")
     belief = result.belief
     if belief is None:
         raise BeliefNeededError("this fit has no belief about rho, so nothing can have moved; use fit.under(prior)")

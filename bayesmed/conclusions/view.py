@@ -1,6 +1,6 @@
 """One belief applied to a fit: effects, probabilities, intervals and moments at each moderator point."""
 
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 from typing import Any
 
@@ -12,10 +12,12 @@ from bayesmed.core.contrasts import Contrasts
 from bayesmed.core.errors import ArgumentError, BeliefNeededError
 from bayesmed.core.mapping import Array
 from bayesmed.core.tipping import claim_probability, effect_moments, effect_quantiles
+from bayesmed.fit.grouped import GroupedResult, chosen_points
 from bayesmed.fit.make import refit
 from bayesmed.fit.result import FitResult
 from bayesmed.fit.reweight import reweight
 from bayesmed.priors.accept import coerce
+from bayesmed.priors.by_group import ByGroup, as_belief
 from bayesmed.study.points import Points
 
 
@@ -103,6 +105,8 @@ def view(result: FitResult, points: Points, rho: Any = None) -> View:
     BeliefNeededError
         If `rho` is None and the fit has no belief.
     """
+    if isinstance(result, GroupedResult):
+        return grouped_view(result, points, rho)
     if rho is None:
         if result.joint:
             return View(result, result.contrasts(points), result.belief, result.flat("rho"))
@@ -112,7 +116,7 @@ def view(result: FitResult, points: Points, rho: Any = None) -> View:
                 "leave; give rho=, for example rho=bm.Uniform(-0.3, 0.3) or rho=0.0, or use fit.under(prior)"
             )
         return View(result, result.contrasts(points), result.belief, None)
-    belief = coerce(rho)
+    belief = _single(rho)
     if not result.joint:
         return View(result, result.contrasts(points), belief, None)
     if belief == result.belief:
@@ -128,8 +132,64 @@ def view_by_draw(result: FitResult, points: Points, rho: Any = None) -> View:
     """Return the same as :func:`view` with draws that all weigh the same, sampled again if need be."""
     if rho is None or not result.joint:
         return view(result, points, rho)
-    belief = coerce(rho)
+    belief = _single(rho)
     return view(result, points) if belief == result.belief else _resampled(result, points, belief, None)
+
+
+@dataclass(frozen=True, eq=False)
+class GroupedView(View):
+    """A fit with a rho for each group: every point is seen in its own group's fit.
+
+    Attributes
+    ----------
+    pieces : tuple of (list of int, View)
+        Places of the points, and the view of the group they belong to.
+    """
+
+    pieces: tuple[tuple[list[int], View], ...] = ()
+
+    def draws(self, effect: str) -> Array:
+        """Return draws of an effect, shape (point, draw); between groups they are tied as the belief says."""
+        return self._gathered(lambda seen: seen.draws(effect))
+
+    def probability_by_draw(self, effect: str, claim: Claim) -> Array:
+        """Return, per point and draw, the belief's probability that the claim's statement is true."""
+        return self._gathered(lambda seen: seen.probability_by_draw(effect, claim))
+
+    def moments(self, effect: str) -> tuple[Array, Array]:
+        """Return posterior mean and SD, each of shape (point,)."""
+        both = self._gathered(lambda seen: np.column_stack(seen.moments(effect)))
+        return both[:, 0], both[:, 1]
+
+    def quantiles(self, effect: str, probabilities: Array) -> Array:
+        """Return posterior quantiles, shape (point, quantile)."""
+        return self._gathered(lambda seen: seen.quantiles(effect, probabilities))
+
+    def _gathered(self, ask: Callable[[View], Array]) -> Array:
+        answers = [(places, ask(seen)) for places, seen in self.pieces]
+        first = answers[0][1]
+        gathered = np.empty((sum(len(places) for places, _ in answers), *first.shape[1:]))
+        for places, answer in answers:
+            gathered[places] = answer
+        return gathered
+
+
+def grouped_view(result: GroupedResult, points: Points, rho: Any) -> GroupedView:
+    """Return a fit with a rho for each group, seen under its own belief or another."""
+    seen_result = result if rho is None else result.with_belief(as_belief(rho))
+    pieces = []
+    for level, places in seen_result.groups_of(points).items():
+        pieces.append((places, view(seen_result.parts[level], chosen_points(points, places))))
+    contrasts = seen_result.contrasts(points)
+    return GroupedView(seen_result, contrasts, seen_result.belief, None, pieces=tuple(pieces))
+
+
+def _single(rho: Any) -> Any:
+    if isinstance(rho, ByGroup):
+        raise ArgumentError(
+            "rho: a ByGroup needs a fit in which each group has its own sigma_m and tau; fit with rho=ByGroup(…)"
+        )
+    return coerce(rho)
 
 
 def _resampled(result: FitResult, points: Points, belief: Any, weighing: Any) -> View:

@@ -153,8 +153,8 @@ def _finite(table: Array, grid: Array) -> Array:
     if bad.any():
         raise ArgumentError(
             f"a term of the outcome equation is not finite at a mediator value of {grid[bad][0]:.4g}, which the "
-            "mediator's normal model reaches; transform the mediator itself, for example `log(m) ~ …`, and use the same "
-            "expression in the outcome formula"
+            "mediator's normal model reaches; transform the mediator itself, for example `log(m) ~ …`, and use the "
+            "same expression in the outcome formula"
         )
     return table
 

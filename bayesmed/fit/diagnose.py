@@ -57,8 +57,7 @@ def watched(result: FitResult) -> dict[str, Array]:
             continue
         values = posterior[name].to_numpy()
         if values.ndim == 2:
-            if np.ptp(values) > 0:
-                found[name] = values
+            found[name] = values
             continue
         for k, term in enumerate(posterior[posterior[name].dims[-1]].to_numpy()):
             found[f"{name}[{term}]"] = values[..., k]
@@ -72,9 +71,9 @@ def watched(result: FitResult) -> dict[str, Array]:
     for name in ("indirect", "direct"):
         for point, value in zip(default.values, contrasts.effect(name, rho), strict=True):
             where = ", ".join(f"{k} = {v}" for k, v in point.items())
-            if np.ptp(value) > 0:
-                found[f"the {name} effect" + (f" at {where}" if where else "")] = value.reshape(result.shape)
-    return found
+            found[f"the {name} effect" + (f" at {where}" if where else "")] = value.reshape(result.shape)
+    # A constant, such as a fixed rho, has nothing to diagnose.
+    return {label: values for label, values in found.items() if np.ptp(values) > 0}
 
 
 def _rank_diagnostics(values: Array) -> tuple[Array, Array, Array]:

@@ -9,13 +9,15 @@ import xarray as xr
 from bayesmed.core.errors import ArgumentError, BeliefNeededError, FitError
 from bayesmed.fit.cut import cut_draws
 from bayesmed.fit.diagnose import warn_if_wrong
+from bayesmed.fit.grouped import fit_groups
 from bayesmed.fit.informants import informants
 from bayesmed.fit.model import build_model
 from bayesmed.fit.movable import MovableBelief, belief_data, movable
 from bayesmed.fit.record import describe
 from bayesmed.fit.result import FitResult, Settings, with_structural
 from bayesmed.fit.sample import compile_model, sample_exact, sample_nuts
-from bayesmed.fit.statistics import reduce_study
+from bayesmed.fit.statistics import Statistics, reduce_study
+from bayesmed.priors.by_group import ByGroup
 from bayesmed.priors.coefficient_set import Coefficients
 from bayesmed.study.observe import Observed
 
@@ -55,13 +57,17 @@ def fit_study(
     informed = informants(observed, statistics, chosen)
     _check_informed(informed, rho, method)
     settings = Settings(method, draws, tune if method == "nuts" else 0, chains, seed, learn)
+    if isinstance(rho, ByGroup):
+        return _grouped(observed, statistics, rho, settings, chosen, progressbar)
     base = FitResult(observed, statistics, xr.DataTree(), rho, bool(informed), chosen, settings)
     if method == "exact":
         if chosen != Coefficients():
             raise ArgumentError(
                 "method='exact' draws under the reference prior and takes no coefficients=; use method='nuts'"
             )
-        result = base.replaced(tree=sample_exact(observed, statistics, settings), belief=None)
+        result = base.replaced(
+            tree=sample_exact(observed.mediator_terms, observed.outcome_terms, statistics, settings), belief=None
+        )
         describe(result)
         return result if rho is None else result.with_belief(rho)
     if informed:
@@ -119,6 +125,31 @@ def _compiled(base: FitResult, belief: Any) -> Any:
         model = build_model(base.statistics, *terms, MovableBelief(belief), base.coefficients)
         base.memory["movable"] = compile_model(model)
     return base.memory["movable"].with_data(**belief_data(belief))
+
+
+def _grouped(
+    observed: Observed,
+    statistics: Statistics,
+    belief: ByGroup,
+    settings: Settings,
+    coefficients: Coefficients,
+    progressbar: bool,
+) -> FitResult:
+    if coefficients != Coefficients():
+        raise ArgumentError(
+            "rho: ByGroup fits each group under the default coefficient priors; leave out coefficients="
+        )
+
+    def sample(part: Statistics, m_terms: tuple[str, ...], y_terms: tuple[str, ...], own: Settings) -> xr.DataTree:
+        if own.method == "exact":
+            return sample_exact(m_terms, y_terms, part, own)
+        return sample_nuts(compile_model(build_model(part, m_terms, y_terms, None, coefficients)), own, progressbar)
+
+    result = fit_groups(observed, statistics, belief, settings, sample)
+    for part in result.parts.values():
+        warn_if_wrong(part)
+    describe(result)
+    return result
 
 
 def _finished(result: FitResult) -> FitResult:

@@ -141,7 +141,9 @@ class FitResult:
         return dataclasses.replace(base, tree=tree, belief=belief)
 
 
-def with_structural(posterior: xr.Dataset, statistics: Statistics, rho: Array) -> xr.Dataset:
+def with_structural(
+    posterior: xr.Dataset, statistics: Statistics, rho: Array, dims: tuple[str, ...] = ("chain", "draw")
+) -> xr.Dataset:
     """Return the posterior with rho, beta and sigma_y added by the map.
 
     Parameters
@@ -149,14 +151,16 @@ def with_structural(posterior: xr.Dataset, statistics: Statistics, rho: Array) -
     posterior : xarray.Dataset
         Holds alpha, gamma, sigma_m, tau.
     statistics : Statistics
-    rho : array, shape (chain, draw)
+    rho : array
+    dims : tuple of str
+        Dims of `rho`: chain, draw, and group where each group has its own.
     """
     values = [posterior[name].to_numpy() for name in ("gamma", "alpha", "sigma_m", "tau")]
     beta, sigma_y = structural_draws(statistics, values[0], values[1], values[2], values[3], rho)
     return posterior.assign(
-        rho=(("chain", "draw"), rho),
-        beta=(("chain", "draw", "outcome_term"), beta),
-        sigma_y=(("chain", "draw"), sigma_y),
+        rho=(dims, rho),
+        beta=((*dims, "outcome_term"), beta),
+        sigma_y=(dims, sigma_y),
     )
 
 

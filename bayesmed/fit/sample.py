@@ -9,7 +9,6 @@ from bayesmed.core.errors import FitError
 from bayesmed.core.regression import exact_draws
 from bayesmed.fit.result import Settings
 from bayesmed.fit.statistics import Statistics
-from bayesmed.study.observe import Observed
 
 
 def compile_model(model: Any) -> Any:
@@ -44,7 +43,9 @@ def sample_nuts(compiled: Any, settings: Settings, progressbar: bool) -> xr.Data
     return tree
 
 
-def sample_exact(observed: Observed, statistics: Statistics, settings: Settings) -> xr.DataTree:
+def sample_exact(
+    mediator_terms: tuple[str, ...], outcome_terms: tuple[str, ...], statistics: Statistics, settings: Settings
+) -> xr.DataTree:
     """Draw both regressions independently under the reference prior ``∝ 1/sigma²`` of each."""
     random = np.random.default_rng([settings.random_seed, 0])
     chains, draws = settings.chains, settings.draws
@@ -60,8 +61,8 @@ def sample_exact(observed: Observed, statistics: Statistics, settings: Settings)
         coords={
             "chain": np.arange(chains),
             "draw": np.arange(draws),
-            "mediator_term": list(observed.mediator_terms),
-            "outcome_term": list(observed.outcome_terms),
+            "mediator_term": list(mediator_terms),
+            "outcome_term": list(outcome_terms),
         },
     )
     return xr.DataTree.from_dict({"posterior": posterior})

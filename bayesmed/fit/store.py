@@ -11,8 +11,10 @@ import pandas as pd
 import xarray as xr
 
 from bayesmed.core.errors import ArgumentError, FitError
+from bayesmed.fit.grouped import GroupedResult, regrouped
 from bayesmed.fit.result import FitResult, Settings
 from bayesmed.fit.statistics import reduce_study
+from bayesmed.priors.by_group import ByGroup
 from bayesmed.priors.coefficient_set import Coefficients
 from bayesmed.priors.named import coefficient_from_spec, from_spec, to_spec
 from bayesmed.study.observe import observe
@@ -46,7 +48,9 @@ def save(result: FitResult, path: str | Path) -> Path:
         }
     )
     tree.attrs["joint"] = int(result.joint)
-    tree.attrs["belief"] = json.dumps(None if result.belief is None else to_spec(result.belief))
+    if isinstance(result, GroupedResult):
+        tree.attrs["groups"] = json.dumps({"moderator": result.moderator, "levels": list(result.parts)})
+    tree.attrs["belief"] = json.dumps(_belief_spec(result.belief))
     tree.attrs["coefficients"] = json.dumps(_coefficients_spec(result.coefficients))
     tree = tree.map_over_datasets(_plain_attributes)
     handle, temporary = tempfile.mkstemp(dir=target.parent, prefix=target.name, suffix=".part")
@@ -84,11 +88,18 @@ def load(path: str | Path) -> FitResult:
     attributes = tree.attrs
     draws, tune, chains, seed = (int(attributes[k]) for k in ("draws", "tune", "chains", "random_seed"))
     settings = Settings(attributes["method"], draws, tune, chains, seed, bool(attributes["learn"]))
-    spec = json.loads(attributes["belief"])
-    belief = None if spec is None else from_spec(spec, place="belief")
+    belief = _belief(json.loads(attributes["belief"]))
     coefficients = _coefficients(json.loads(attributes["coefficients"]))
     joint = bool(attributes["joint"])
     del tree["rows"]
+    if "groups" in attributes:
+        groups = json.loads(attributes["groups"])
+        posterior = tree["posterior"].to_dataset()
+        result = regrouped(
+            observed, reduce_study(observed), settings, groups["moderator"], groups["levels"], posterior, belief
+        )
+        result.tree.attrs.update(attributes)
+        return result
     return FitResult(observed, reduce_study(observed), tree, belief, joint, coefficients, settings)
 
 
@@ -126,6 +137,20 @@ def _decoded(rows: xr.Dataset, kinds: list[dict[str, Any]]) -> pd.DataFrame:
         else:
             columns[kind["name"]] = values.astype(bool) if kind["kind"] == "boolean" else values
     return pd.DataFrame(columns)
+
+
+def _belief_spec(belief: Any) -> Any:
+    if not isinstance(belief, ByGroup):
+        return None if belief is None else to_spec(belief)
+    groups = [[level, to_spec(prior)] for level, prior in belief.items]
+    return {"by_group": groups, "correlation": belief.correlation, "moderator": belief.moderator}
+
+
+def _belief(spec: Any) -> Any:
+    if not isinstance(spec, dict) or "by_group" not in spec:
+        return None if spec is None else from_spec(spec, place="belief")
+    priors = {level: from_spec(prior, place=f"belief.{level}") for level, prior in spec["by_group"]}
+    return ByGroup(priors, correlation=spec["correlation"], moderator=spec["moderator"])
 
 
 def _coefficients_spec(coefficients: Coefficients) -> dict[str, Any]:

@@ -84,10 +84,14 @@ class Fit:
         Where the data are silent on rho nothing is sampled. Where they inform it the model is sampled again, which
         is said in :attr:`how`.
         """
+        from bayesmed.core.errors import ArgumentError
+        from bayesmed.fit.grouped import GroupedResult
         from bayesmed.fit.make import refit
-        from bayesmed.priors import coerce
+        from bayesmed.priors import ByGroup, as_belief
 
-        belief = coerce(prior)
+        belief = as_belief(prior)
+        if isinstance(belief, ByGroup) and not isinstance(self.result, GroupedResult):
+            raise ArgumentError("under: a ByGroup needs a fit made with rho=ByGroup(…), study.fit(rho=…)")
         if self.result.joint:
             return Fit(refit(self.result, belief))
         return Fit(self.result.with_belief(belief))

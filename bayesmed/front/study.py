@@ -150,11 +150,11 @@ class Study:
         from bayesmed.fit.informants import informed_message
         from bayesmed.fit.make import fit_study
         from bayesmed.front.fit import Fit
-        from bayesmed.priors import coerce
+        from bayesmed.priors import as_belief
 
         result = fit_study(
             self.observed,
-            rho=None if rho is None else coerce(rho),
+            rho=None if rho is None else as_belief(rho),
             method=method,
             draws=draws,
             tune=tune,

@@ -2,6 +2,7 @@
 
 from bayesmed.priors.accept import coerce
 from bayesmed.priors.adapters import FromScipy, Wrapped
+from bayesmed.priors.by_group import ByGroup, as_belief
 from bayesmed.priors.coefficient_set import Coefficients
 from bayesmed.priors.coefficients import (
     CoefficientPrior,
@@ -32,6 +33,7 @@ from bayesmed.priors.uniform import Uniform
 __all__ = [
     "LKJ",
     "BetaShare",
+    "ByGroup",
     "CoefficientPrior",
     "Coefficients",
     "Exponential",
@@ -53,6 +55,7 @@ __all__ = [
     "TruncatedNormal",
     "Uniform",
     "Wrapped",
+    "as_belief",
     "coefficient_from_spec",
     "coerce",
     "from_draws",

@@ -1,18 +1,19 @@
-"""The README's notebook lines run and print the table that stands under them."""
+"""The code on the README and on pages of the documentation runs and prints what stands under it."""
 
 import re
 from pathlib import Path
 
 import pytest
 
-README = Path(__file__).parents[2] / "README.md"
+CHECKOUT = Path(__file__).parents[2]
 
 
-def test_the_table_is_the_one_that_the_lines_print(capsys):
-    text = README.read_text(encoding="utf-8")
+@pytest.mark.parametrize("page", ["README.md", "docs/earlier_evidence.md"])
+def test_a_page_shows_what_its_code_prints(capsys, page):
+    text = (CHECKOUT / page).read_text(encoding="utf-8")
     code = re.search(r"```python\n(.*?)```", text, re.DOTALL).group(1)
     promised = re.search(r"```text\n(.*?)```", text, re.DOTALL).group(1)
-    exec(compile(code, "README.md", "exec"), {})
+    exec(compile(code, page, "exec"), {})
     printed = capsys.readouterr().out
     numbers = r"[<>]?-?\d+\.?\d*"
     assert re.sub(numbers, "#", printed).split() == re.sub(numbers, "#", promised).split()
