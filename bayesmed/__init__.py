@@ -10,33 +10,44 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     from bayesmed import priors
     from bayesmed.conclusions.claim import Claim
+    from bayesmed.conclusions.prior_map import contour
     from bayesmed.core import errors
     from bayesmed.examples import load_example
     from bayesmed.front.comparison import Comparison
     from bayesmed.front.fit import Fit, load
     from bayesmed.front.study import Study
     from bayesmed.front.tipping import Tipping
+    from bayesmed.front.yardsticks import Yardsticks
     from bayesmed.priors import (
         LKJ,
+        AnyOn,
         BetaShare,
         ByGroup,
         Coefficients,
+        Contaminated,
         Exponential,
         FisherNormal,
         HalfNormal,
         HalfStudentT,
         LogNormal,
+        Mean,
         Mixture,
+        Nearby,
         Normal,
         PointMass,
+        Probability,
+        Quantile,
         SharedCause,
+        Statements,
         StretchedBeta,
         StudentT,
         Tabulated,
         TruncatedNormal,
         Uniform,
+        UnimodalAt,
         from_draws,
         from_quantiles,
+        with_mean_and_sd,
     )
 
 _HOME = {
@@ -45,6 +56,8 @@ _HOME = {
     "Fit": "bayesmed.front.fit",
     "Study": "bayesmed.front.study",
     "Tipping": "bayesmed.front.tipping",
+    "Yardsticks": "bayesmed.front.yardsticks",
+    "contour": "bayesmed.conclusions.prior_map",
     "load": "bayesmed.front.fit",
     "load_example": "bayesmed.examples",
     **dict.fromkeys(
@@ -52,6 +65,15 @@ _HOME = {
             "LKJ",
             "BetaShare",
             "ByGroup",
+            "AnyOn",
+            "Contaminated",
+            "Mean",
+            "Nearby",
+            "Probability",
+            "Quantile",
+            "Statements",
+            "UnimodalAt",
+            "with_mean_and_sd",
             "Coefficients",
             "Exponential",
             "FisherNormal",
@@ -77,21 +99,28 @@ _MODULES = {"errors": "bayesmed.core.errors", "priors": "bayesmed.priors"}
 
 __all__ = [
     "LKJ",
+    "AnyOn",
     "BetaShare",
     "ByGroup",
     "Claim",
     "Coefficients",
     "Comparison",
+    "Contaminated",
     "Exponential",
     "FisherNormal",
     "Fit",
     "HalfNormal",
     "HalfStudentT",
     "LogNormal",
+    "Mean",
     "Mixture",
+    "Nearby",
     "Normal",
     "PointMass",
+    "Probability",
+    "Quantile",
     "SharedCause",
+    "Statements",
     "StretchedBeta",
     "StudentT",
     "Study",
@@ -99,12 +128,16 @@ __all__ = [
     "Tipping",
     "TruncatedNormal",
     "Uniform",
+    "UnimodalAt",
+    "Yardsticks",
+    "contour",
     "errors",
     "from_draws",
     "from_quantiles",
     "load",
     "load_example",
     "priors",
+    "with_mean_and_sd",
 ]
 
 

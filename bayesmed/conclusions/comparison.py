@@ -102,7 +102,7 @@ def _shift(rows: pd.DataFrame, reference: str, where: str) -> str:
     errors = dict(zip(rows.index, rows["mcse"], strict=True))
 
     def shown(label: str) -> str:
-        return f"{label} ({probability_text(probabilities[label], errors[label])})"
+        return f"“{label}” ({probability_text(probabilities[label], errors[label])})"
 
     def having(verdict: str) -> list[str]:
         return [label for label, found in verdicts.items() if found == verdict]

@@ -1,26 +1,31 @@
 """Fit: draws of what the data identify, from which every conclusion follows under any belief."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import pandas as pd
 import xarray as xr
 
+from bayesmed.conclusions.breaking_point import breaking_point
 from bayesmed.conclusions.claim import Claim
 from bayesmed.conclusions.comparison import compare
 from bayesmed.conclusions.direction import direction
 from bayesmed.conclusions.effects import effects
+from bayesmed.conclusions.envelope import envelope, worst_case
 from bayesmed.conclusions.implied_prior import implied_prior
 from bayesmed.conclusions.leaning import leaning
 from bayesmed.conclusions.movement import Movement, movement
+from bayesmed.conclusions.prior_map import prior_map
 from bayesmed.conclusions.summary import rho_grid, summary
 from bayesmed.conclusions.tipping import tipping
+from bayesmed.conclusions.yardsticks import Covariates, strength_draws, yardsticks
 from bayesmed.fit.result import FitResult
 from bayesmed.front.comparison import Comparison
 from bayesmed.front.shown import as_html, as_text
 from bayesmed.front.study import Study
 from bayesmed.front.tipping import Tipping
+from bayesmed.front.yardsticks import Yardsticks
 
 if TYPE_CHECKING:
     from bayesmed.priors import Prior
@@ -136,6 +141,62 @@ class Fit:
     def tipping(self, at: Any = None, claim: Claim | None = None, ci_prob: float = 0.95) -> Tipping:
         """Return the distribution of the rho at which the claim tips."""
         return Tipping(tipping(self.result, at, claim, ci_prob))
+
+    def envelope(self, set_of_priors: Any, at: Any = None, claim: Claim | None = None) -> pd.DataFrame:
+        """Return the smallest and largest probability of a claim, and mean of its effect, over a set of priors.
+
+        ``all_rho`` beside them is another thing: the probability that the claim is true at every rho of the set.
+        """
+        return envelope(self.result, set_of_priors, at, claim)
+
+    def worst_case(self, set_of_priors: Any, at: Any = None, claim: Claim | None = None) -> pd.DataFrame:
+        """Return the prior of a set under which a claim is least probable, per moderator point."""
+        return worst_case(self.result, set_of_priors, at, claim)
+
+    def breaking_point(
+        self, sets: Any, largest: float = 1.0, at: Any = None, claim: Claim | None = None
+    ) -> pd.DataFrame:
+        """Return how far a set of priors must grow, as in ``lambda e: Contaminated(prior, e)``, to overturn a claim."""
+        return breaking_point(self.result, sets, largest, at, claim)
+
+    def prior_map(
+        self,
+        family: str = "StretchedBeta",
+        mean: Any = None,
+        sd: Any = None,
+        at: Any = None,
+        claim: Claim | None = None,
+        bounds: tuple[float, float] | None = None,
+    ) -> xr.DataArray:
+        """Return the probability of a claim over the plane of a belief's mean and SD of rho."""
+        return prior_map(self.result, family, mean, sd, at, claim, bounds)
+
+    def yardsticks(
+        self,
+        covariates: Covariates = None,
+        strength: Sequence[float] = (0.5, 1, 2),
+        at: Any = None,
+        claim: Claim | None = None,
+    ) -> Yardsticks:
+        """Compare unmeasured causes with measured covariates.
+
+        Parameters
+        ----------
+        covariates : str, list of str, or dict of label → covariate or list, optional
+            Covariates, and blocks of them under a label; every covariate that stands in terms of its own if left out.
+        strength : sequence of float
+            How many times as strong as the covariate the unmeasured cause is.
+
+        Returns
+        -------
+        Yardsticks
+            ``.table``, the rho such a cause would leave; ``.overturning``, how strong it must be for the claim to tip.
+        """
+        return Yardsticks(yardsticks(self.result, covariates, strength, at, claim))
+
+    def strength_draws(self, covariates: str | Sequence[str], multiple: float = 1.0) -> Any:
+        """Return, per draw, the rho left by a cause `multiple` times as strong as a covariate or block."""
+        return strength_draws(self.result, covariates, multiple)
 
     def movement(self) -> Movement:
         """Return how far rho moved from prior to posterior, with a distance and what moved it."""

@@ -7,7 +7,7 @@ import pandas as pd
 
 from bayesmed.conclusions.words import number_text, probability_text, value_text
 
-NUMBERS = ("mean", "sd", "lower", "upper", "median")
+NUMBERS = ("mean", "sd", "lower", "upper", "median", "rho", "left_out")
 SHARES = ("outside", "toward_minus_one", "toward_plus_one")
 
 

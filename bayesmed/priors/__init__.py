@@ -3,6 +3,7 @@
 from bayesmed.priors.accept import coerce
 from bayesmed.priors.adapters import FromScipy, Wrapped
 from bayesmed.priors.by_group import ByGroup, as_belief
+from bayesmed.priors.by_moments import with_mean_and_sd
 from bayesmed.priors.coefficient_set import Coefficients
 from bayesmed.priors.coefficients import (
     CoefficientPrior,
@@ -22,7 +23,12 @@ from bayesmed.priors.named import coefficient_from_spec, from_spec, to_spec
 from bayesmed.priors.panel import panel
 from bayesmed.priors.point import PointMass
 from bayesmed.priors.prior import Prior
+from bayesmed.priors.prior_set import PriorSet
 from bayesmed.priors.protocol import HasDirection
+from bayesmed.priors.reweighted import Reweighted
+from bayesmed.priors.sets import AnyOn, Contaminated, UnimodalAt
+from bayesmed.priors.sets_nearby import Nearby
+from bayesmed.priors.sets_statements import Mean, Probability, Quantile, Statements
 from bayesmed.priors.shared_cause import SharedCause
 from bayesmed.priors.shared_size import BetaShare
 from bayesmed.priors.stretched_beta import LKJ, StretchedBeta
@@ -32,10 +38,12 @@ from bayesmed.priors.uniform import Uniform
 
 __all__ = [
     "LKJ",
+    "AnyOn",
     "BetaShare",
     "ByGroup",
     "CoefficientPrior",
     "Coefficients",
+    "Contaminated",
     "Exponential",
     "FisherNormal",
     "FromMaker",
@@ -44,16 +52,24 @@ __all__ = [
     "HalfStudentT",
     "HasDirection",
     "LogNormal",
+    "Mean",
     "Mixture",
+    "Nearby",
     "Normal",
     "PointMass",
     "Prior",
+    "PriorSet",
+    "Probability",
+    "Quantile",
+    "Reweighted",
     "SharedCause",
+    "Statements",
     "StretchedBeta",
     "StudentT",
     "Tabulated",
     "TruncatedNormal",
     "Uniform",
+    "UnimodalAt",
     "Wrapped",
     "as_belief",
     "coefficient_from_spec",
@@ -65,4 +81,5 @@ __all__ = [
     "panel",
     "quantile_gaps",
     "to_spec",
+    "with_mean_and_sd",
 ]

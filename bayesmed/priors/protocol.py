@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Protocol
 
 from numpy.typing import ArrayLike
 
-__all__ = ["HasDirection"]
+__all__ = ["HasDirection", "HasYardsticks"]
 
 
 class HasDirection(Protocol):
@@ -14,4 +15,12 @@ class HasDirection(Protocol):
 
     def direction(self) -> ArrayLike:
         """Return, one to a posterior draw, numbers with the sign of the exposure's effect on the mediator."""
+        ...
+
+
+class HasYardsticks(Protocol):
+    """Posterior draws that can compare an unmeasured cause with measured covariates."""
+
+    def strength_draws(self, covariates: str | Sequence[str], multiple: float) -> ArrayLike:
+        """Return, one to a draw, the ρ left by a cause `multiple` times as strong as the covariates."""
         ...

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -12,6 +13,7 @@ from scipy.special import betaln
 
 from bayesmed.priors.arguments import plain, real, refusal
 from bayesmed.priors.prior import Floats, Prior
+from bayesmed.priors.protocol import HasYardsticks
 from bayesmed.priors.shared_size import BetaShare, Size, size_of
 
 __all__ = ["SharedCause"]
@@ -61,6 +63,42 @@ class SharedCause(Prior):
             raise refusal("SharedCause", "positive", positive, allowed)
         object.__setattr__(self, "positive", positive)
         self._size()  # refuses shapes it cannot compute with, at once
+
+    @staticmethod
+    def like(
+        fit: HasYardsticks, covariates: str | Sequence[str], multiple: float = 1.0, positive: float | None = None
+    ) -> Prior:
+        """Return the belief in a cause `multiple` times as strong as measured covariates.
+
+        Parameters
+        ----------
+        fit : Fit
+            Whose posterior tells how strong the covariates are, and how surely.
+        covariates : str or sequence of str
+            A covariate, or several taken together as one block.
+        multiple : float
+            How many times as strong.
+        positive : float, optional
+            The probability that ρ is positive. If left out the cause pushes mediator and outcome as the covariates do.
+
+        Returns
+        -------
+        Prior
+            The posterior of that ρ, or with `positive` of its size, as `from_draws` makes it.
+        """
+        from bayesmed.priors.mixture import Mixture
+        from bayesmed.priors.tabulated import from_draws
+
+        rho = np.asarray(fit.strength_draws(covariates, multiple), dtype=float)
+        if positive is None:
+            return from_draws(rho)
+        share = real("SharedCause.like", "positive", positive)
+        if not 0 <= share <= 1:
+            raise refusal("SharedCause.like", "positive", positive, "it is a probability between 0 and 1")
+        both = [from_draws(np.abs(rho)), from_draws(-np.abs(rho))]
+        if share in (0.0, 1.0):
+            return both[0] if share == 1 else both[1]
+        return Mixture(both, [share, 1 - share])
 
     def support(self) -> tuple[float, float]:
         """Return the ends: ±√(R²_M · R²_Y) at its largest, or 0 on a side that is excluded."""

@@ -28,7 +28,7 @@ def test_report_prints_the_comparison_and_writes_the_folder(quick: Write, tmp_pa
         # Long labels go over several lines of their column, and no character of them is lost.
         words = label.split()
         assert all(word in out for word in words if len(word) < 15), label
-    assert "Atconfidence=4theclaimholdsundernothingleftout" in flat
+    assert "Atconfidence=4theclaimholdsunder“nothingleftout”" in flat
     for verdict in table["verdict"].dropna().unique():
         assert verdict in out
     assert "…" not in out

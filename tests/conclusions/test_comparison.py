@@ -59,9 +59,9 @@ def test_the_sentence_names_the_beliefs_that_change_the_verdict(fit):
         {"none": 0.0, "strong": 0.8, "reversed": -0.5}, at={"z": 1.0}, claim=bm.Claim("indirect", above=0, required=0.9)
     )
     (sentence,) = comparison.shifts
-    assert sentence.startswith("At z = 1 the claim holds under none (")
-    assert "as under reversed (" in sentence
-    assert sentence.endswith("it fails under strong (<0.001).")
+    assert sentence.startswith("At z = 1 the claim holds under “none” (")
+    assert "as under “reversed” (" in sentence
+    assert sentence.endswith("it fails under “strong” (<0.001).")
 
 
 def test_a_probability_is_never_printed_as_certain(fit):

@@ -1,0 +1,43 @@
+"""Yardsticks: unmeasured causes beside measured covariates."""
+
+import pandas as pd
+
+from bayesmed.conclusions.yardsticks import YardsticksResult
+from bayesmed.front.shown import as_html, as_text
+
+HEADING = (
+    "The rho that an unmeasured cause would leave, were it so many times as strong as a measured covariate (median and "
+    "95 % of draws); left_out is another question: the rho that leaving the covariate itself out would have left."
+)
+
+
+class Yardsticks:
+    """Unmeasured causes compared with measured covariates; made by ``Fit.yardsticks``."""
+
+    def __init__(self, result: YardsticksResult) -> None:
+        self._result = result
+
+    @property
+    def table(self) -> pd.DataFrame:
+        """One row per covariate and strength: covariate, strength, rho, lower, upper, left_out.
+
+        ``rho`` with its central 95 % is the correlation that a cause so many times as strong would leave, nan where
+        no such cause can exist. ``left_out`` is the correlation that leaving the covariate itself out would have left.
+        """
+        return self._result.table
+
+    @property
+    def overturning(self) -> pd.DataFrame:
+        """One row per covariate and moderator point: how many times as strong a cause must be to tip the claim."""
+        return self._result.overturning
+
+    @property
+    def sentences(self) -> tuple[str, ...]:
+        """The overturning strengths in words."""
+        return self._result.sentences
+
+    def __repr__(self) -> str:
+        return "\n".join([HEADING, "", as_text(self.table), "", *self.sentences])
+
+    def _repr_html_(self) -> str:
+        return as_html("\n".join([HEADING, *self.sentences]), self.table)
