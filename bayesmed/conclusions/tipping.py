@@ -1,6 +1,6 @@
 """The tipping distribution of a claim: at which residual correlation each draw crosses the claim's limit."""
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
@@ -8,18 +8,20 @@ from typing import Any
 import numpy as np
 import pandas as pd
 import xarray as xr
+from scipy.optimize import brentq
 
 from bayesmed.conclusions.accuracy import mean_with_error
 from bayesmed.conclusions.claim import Claim, as_claim
 from bayesmed.conclusions.summary import checked_width
 from bayesmed.core.contrasts import Contrasts
 from bayesmed.core.errors import ArgumentError, FitError
-from bayesmed.core.mapping import Array
+from bayesmed.core.mapping import Array, odds
 from bayesmed.core.tipping import claim_probability, tipping_correlation
 from bayesmed.fit.result import FitResult
 from bayesmed.priors.accept import coerce
 from bayesmed.study.points import Points, points
 
+STEPS = np.linspace(0.02, 0.98, 49)
 RANGE = 0.9
 """Correlations beyond this in size are set apart. Common practice, no source."""
 CAUTION = (
@@ -71,7 +73,10 @@ class TippingResult:
 
         Columns: the moderators; median, lower, upper of the tipping correlation; outside, the share of draws that
         do not cross within ±0.9; toward_minus_one and toward_plus_one, the probabilities of the claim as the
-        correlation tends to -1 and +1, which no belief can exceed or undercut by being extreme.
+        correlation tends to -1 and +1, which no belief can exceed or undercut by being extreme; interval_down and
+        interval_up, the fixed correlations nearest zero at which the interval of the effect takes in the limit, going
+        down and going up from zero; required_down and required_up, those at which the claim's probability falls under
+        what it requires. Zero where that is so at zero already, nan where it is not so as far as ±0.98.
         """
         tail = (1 - self.ci_prob) / 2
         _, slope = self.lines
@@ -93,19 +98,45 @@ class TippingResult:
             outside=np.mean(~(np.abs(crossings) <= RANGE), axis=1),
             toward_minus_one=holds_low.mean(axis=1),
             toward_plus_one=holds_high.mean(axis=1),
+            **self._fixed_limits(tail),
         )
         return pd.DataFrame(columns)
 
+    def _fixed_limits(self, tail: float) -> dict[str, Array]:
+        found = np.empty((4, len(self.lines[0])))
+        for place, (constant, slope) in enumerate(zip(*self.lines, strict=True)):
+
+            def outside(rho: float, constant: Array = constant, slope: Array = slope) -> float:
+                lower, upper = np.quantile(constant - slope * odds(rho), [tail, 1 - tail])
+                return float(max(lower - self.claim.limit, self.claim.limit - upper))
+
+            def spare(rho: float, constant: Array = constant, slope: Array = slope) -> float:
+                values = constant - slope * odds(rho)
+                true = values > self.claim.limit if self.claim.direction == "above" else values < self.claim.limit
+                return float(true.mean() - self.claim.required)
+
+            found[:, place] = [_first(f, sign) for f in (outside, spare) for sign in (-1, 1)]
+        return dict(zip(("interval_down", "interval_up", "required_down", "required_up"), found, strict=True))
+
     def probability(self, prior: Any) -> pd.DataFrame:
-        """Return the probability of the claim under any belief, with its Monte Carlo error, per moderator point."""
-        belief = coerce(prior)
+        """Return the probability of the claim under a belief or its distribution function, per moderator point.
+
+        Columns: the moderators; probability and mcse; unlimited, the probability to which it would go with unlimited
+        data, were the tipping correlation at its posterior median. What parts that from 0 and 1 is ignorance of rho;
+        what parts the two is imprecision of the study.
+        """
+        belief: Any = _DistributionFunction(prior) if callable(prior) else coerce(prior)
         constant, slope = self.lines
         by_draw = claim_probability(constant, slope, self.claim.limit, self.claim.direction, belief)
         value, mcse = mean_with_error(by_draw, self.result)
         columns: dict[str, Any] = {
             name: [point[name] for point in self.points.values] for name in (*self.points.dims, *self.points.scalars)
         }
-        return pd.DataFrame({**columns, "probability": value, "mcse": mcse})
+        limit = tipping_correlation(constant, slope, self.claim.limit)
+        middle = np.nanmedian(np.where(slope == 0, 0.0, limit), axis=1)
+        falls = np.median(slope, axis=1) > 0 if self.claim.direction == "above" else np.median(slope, axis=1) < 0
+        unlimited = np.where(falls, belief.below(middle), belief.above(middle))
+        return pd.DataFrame({**columns, "probability": value, "mcse": mcse, "unlimited": unlimited})
 
     def curve(self, moderator: str, values: Sequence[Any] | None = None) -> pd.DataFrame:
         """Return the tipping correlation along a moderator: its values, median, lower and upper."""
@@ -120,6 +151,34 @@ class TippingResult:
         fixed = dict(self.points.scalars)
         along = tipping(self.result, {**fixed, moderator: list(values)}, self.claim, self.ci_prob)
         return along.table
+
+
+class _DistributionFunction:
+    """A plain continuous distribution function as a belief."""
+
+    def __init__(self, cdf: Callable[[Array], Any]) -> None:
+        self.cdf = cdf
+
+    def below(self, x: Array) -> Array:
+        values = np.asarray(self.cdf(x), dtype=float)
+        if values.shape != np.shape(x) or not np.all((values >= 0) & (values <= 1)):
+            raise ArgumentError("probability: the distribution function must return a value in [0, 1] for every rho")
+        return values
+
+    def above(self, x: Array) -> Array:
+        return 1 - self.below(x)
+
+
+def _first(function: Callable[[float], float], sign: int) -> float:
+    """Return where, going from 0 in the direction of `sign`, the function first falls to zero or below."""
+    if function(0.0) <= 0:
+        return 0.0
+    before = 0.0
+    for rho in sign * STEPS:
+        if function(rho) <= 0:
+            return float(brentq(function, before, rho, xtol=1e-6))
+        before = rho
+    return float("nan")
 
 
 def tipping(result: FitResult, at: Any = None, claim: Claim | None = None, ci_prob: float = 0.95) -> TippingResult:

@@ -8,6 +8,7 @@ import pandas as pd
 from bayesmed.conclusions.words import number_text, probability_text, value_text
 
 NUMBERS = ("mean", "sd", "lower", "upper", "median", "rho", "left_out")
+CORRELATIONS = ("interval_down", "interval_up", "required_down", "required_up")
 SHARES = ("outside", "toward_minus_one", "toward_plus_one")
 
 
@@ -22,6 +23,8 @@ def shown(table: pd.DataFrame) -> pd.DataFrame:
             columns[name] = [_error_text(e) for e in column]
         elif name in SHARES:
             columns[name] = [probability_text(float(v)) for v in column]
+        elif name in CORRELATIONS:
+            columns[name] = ["none" if np.isnan(v) else f"{v:.2f}" for v in column]
         elif name in NUMBERS:
             columns[name] = [number_text(float(v)) for v in column]
         else:

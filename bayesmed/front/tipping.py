@@ -35,12 +35,19 @@ class Tipping:
         """One row per moderator point.
 
         Columns: median, lower and upper of the tipping correlation; outside, the share of draws that do not cross
-        within ±0.9; toward_minus_one and toward_plus_one, the probability of the claim as rho tends to -1 and +1.
+        within ±0.9; toward_minus_one and toward_plus_one, the probability of the claim as rho tends to -1 and +1;
+        interval_down and interval_up, the fixed rho nearest zero at which the effect's interval takes in the limit;
+        required_down and required_up, those at which the probability falls under what the claim requires (0 where it
+        is so at zero already, nan where not as far as ±0.98).
         """
         return self._result.table
 
     def probability(self, prior: Any) -> pd.DataFrame:
-        """Return the probability of the claim under any prior, with its Monte Carlo error, per moderator point."""
+        """Return the probability of the claim under a prior or a distribution function, per moderator point.
+
+        Columns: probability, mcse, and unlimited, the probability with unlimited data, so that ignorance of rho and
+        imprecision of the study are told apart.
+        """
         return self._result.probability(prior)
 
     def curve(self, moderator: str, values: Sequence[Any] | None = None) -> pd.DataFrame:

@@ -69,3 +69,9 @@ def test_tipping_correlations(fit):
     assert indirect["median"] == pytest.approx(0.4113, abs=0.002)
     direct = fit.tipping(at={}, claim=bm.Claim("direct", above=0)).table.iloc[0]
     assert direct["median"] == pytest.approx(-0.574, abs=0.01)
+
+
+def test_the_limit_with_unlimited_data_tells_ignorance_from_imprecision(fit):
+    row = fit.tipping(at={}).probability(bm.LKJ(2)).iloc[0]
+    assert row["probability"] == pytest.approx(0.782, abs=4 * row["mcse"] + 0.0005)
+    assert row["unlimited"] == pytest.approx(0.791, abs=0.002)
