@@ -11,6 +11,7 @@ if TYPE_CHECKING:
     from bayesmed import priors
     from bayesmed.conclusions.claim import Claim
     from bayesmed.conclusions.prior_map import contour
+    from bayesmed.conclusions.varying import Covariance
     from bayesmed.core import errors
     from bayesmed.examples import load_example
     from bayesmed.front.comparison import Comparison
@@ -53,6 +54,7 @@ if TYPE_CHECKING:
 _HOME = {
     "Claim": "bayesmed.conclusions.claim",
     "Comparison": "bayesmed.front.comparison",
+    "Covariance": "bayesmed.conclusions.varying",
     "Fit": "bayesmed.front.fit",
     "Study": "bayesmed.front.study",
     "Tipping": "bayesmed.front.tipping",
@@ -106,6 +108,7 @@ __all__ = [
     "Coefficients",
     "Comparison",
     "Contaminated",
+    "Covariance",
     "Exponential",
     "FisherNormal",
     "Fit",

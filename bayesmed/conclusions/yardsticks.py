@@ -191,7 +191,7 @@ def _sentence(label: str, where: str, needed: Array, claim: Claim) -> str:
             f"{start}, no unmeasured cause that pushes mediator and outcome as {label} does makes the claim "
             f"{claim} tip, however strong."
         )
-    upper = "no strength at all" if not np.isfinite(needed[2]) else number_text(needed[2], 2)
+    upper = "no limit" if not np.isfinite(needed[2]) else number_text(needed[2], 2)
     return (
         f"{start}, an unmeasured cause must be {number_text(needed[0], 2)} times as strong as {label} (95 % of draws: "
         f"{number_text(needed[1], 2)} to {upper}) for the claim {claim} to tip."

@@ -2,7 +2,7 @@
 
 from collections.abc import Mapping, Sequence
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, Literal
 
 import pandas as pd
 import xarray as xr
@@ -15,10 +15,13 @@ from bayesmed.conclusions.effects import effects
 from bayesmed.conclusions.envelope import envelope, worst_case
 from bayesmed.conclusions.implied_prior import implied_prior
 from bayesmed.conclusions.leaning import leaning
+from bayesmed.conclusions.moderation_index import moderation_index
 from bayesmed.conclusions.movement import Movement, movement
 from bayesmed.conclusions.prior_map import prior_map
+from bayesmed.conclusions.regions import regions
 from bayesmed.conclusions.summary import rho_grid, summary
 from bayesmed.conclusions.tipping import tipping
+from bayesmed.conclusions.varying import covariance_tipping, with_covariance
 from bayesmed.conclusions.yardsticks import Covariates, strength_draws, yardsticks
 from bayesmed.fit.result import FitResult
 from bayesmed.front.comparison import Comparison
@@ -141,6 +144,49 @@ class Fit:
     def tipping(self, at: Any = None, claim: Claim | None = None, ci_prob: float = 0.95) -> Tipping:
         """Return the distribution of the rho at which the claim tips."""
         return Tipping(tipping(self.result, at, claim, ci_prob))
+
+    def regions(
+        self,
+        prior: Any,
+        moderator: str,
+        claim: Claim | None = None,
+        reading: Literal["pointwise", "simultaneous"] = "pointwise",
+        at: Mapping[str, Any] | None = None,
+    ) -> pd.DataFrame:
+        """Return the moderator values where a claim holds under a prior, with the error of the edges.
+
+        The simultaneous reading keeps the values at which the claim is true of all at once with the required
+        probability; `at` holds other moderators at a value.
+        """
+        return regions(self.result, prior, moderator, claim, reading, at)
+
+    def moderation_index(
+        self,
+        moderator: str,
+        values: Sequence[Any] | None = None,
+        rho: Any = None,
+        at: Mapping[str, Any] | None = None,
+    ) -> pd.DataFrame:
+        """Return contrasts of the indirect effect between moderator values, and its slope where there is one.
+
+        Where the exposure moves the mediator alike at all values no belief about rho is needed, and it is said.
+        """
+        return moderation_index(self.result, moderator, values, rho, at)
+
+    def with_covariance(
+        self,
+        covariance: Any,
+        at: Any = None,
+        rho: Any = None,
+        claim: Claim | None = None,
+        ci_prob: float = 0.95,
+    ) -> pd.DataFrame:
+        """Return the summary when the two paths vary between people and covary: a number, belief or Covariance."""
+        return with_covariance(self.result, covariance, at, rho, claim, ci_prob)
+
+    def covariance_tipping(self, rho: Any, at: Any = None, claim: Claim | None = None) -> pd.DataFrame:
+        """Return the covariance between people's paths that overturns a claim, at each given rho."""
+        return covariance_tipping(self.result, rho, at, claim)
 
     def envelope(self, set_of_priors: Any, at: Any = None, claim: Claim | None = None) -> pd.DataFrame:
         """Return the smallest and largest probability of a claim, and mean of its effect, over a set of priors.
