@@ -143,11 +143,12 @@ def test_simultaneous_regions_lie_within_pointwise_ones_and_cannot_grow(fit, cla
 
 
 def test_the_error_of_an_edge_is_the_spread_of_edges_between_fits(fit):
-    again = [fit.study.fit(method="exact", random_seed=seed, draws=100) for seed in range(12)]
+    again = [fit.study.fit(method="exact", random_seed=seed, draws=100) for seed in range(8)]
     found = [regions(one.result, BELIEF, "z", CLAIMS[0]) for one in again]
     edges, errors = np.array([(f["from"][0], f["from_mcse"][0]) for f in found]).T
-    # A SD from 12 values lies within 0.45 and 1.75 of the truth 99.8 times in 100 (chi-squared, 11 df).
-    assert 0.45 < edges.std(ddof=1) / errors.mean() < 1.75
+    # A SD from 8 values lies within 0.33 and 1.90 of the truth 99.8 times in 100 (chi-squared, 7 df)
+    # and the errors' own average is good to a few per cent.
+    assert 0.33 < edges.std(ddof=1) / errors.mean() < 1.9
 
 
 def test_levels_one_row_each(fit):
@@ -177,7 +178,7 @@ def test_an_outcome_curved_in_the_mediator(simulated):
         simulated(60, 0.2, seed=3), exposure="x", mediator="m ~ x * z", outcome="y ~ (m + I(m ** 2)) * z + x * z"
     )
     fit = study.fit(method="exact", draws=20, random_seed=1, progressbar=False)
-    claim = bm.Claim("direct", above=-0.5, required=0.6)
+    claim = bm.Claim("direct", below=-0.5, required=0.93)
     found = regions(fit.result, BELIEF, "z", claim)
     z = fit.result.observed.frame["z"]
     inner = [(e, s) for e, s in zip(found[["from", "to"]].to_numpy().ravel(), [1, -1] * len(found), strict=True)
@@ -185,8 +186,8 @@ def test_an_outcome_curved_in_the_mediator(simulated):
     assert len(inner) > 0
     for edge, inward in inner:
         constant, slope = lines(fit, [edge - 0.05 * inward, edge + 0.05 * inward], "direct")
-        outside, inside = claim_probability(constant, slope, -0.5, "above", BELIEF).mean(axis=1)
-        assert outside < 0.6 < inside
+        outside, inside = claim_probability(constant, slope, -0.5, "below", BELIEF).mean(axis=1)
+        assert outside < 0.93 < inside
 
 
 def test_no_region_is_an_empty_frame_and_the_whole_range_has_no_error(fit):
