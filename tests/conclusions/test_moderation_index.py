@@ -61,7 +61,8 @@ def test_moderation_of_the_second_path_alone_is_free_of_rho(second):
 
 
 def test_the_slope_is_the_product_of_coefficients(second):
-    # With m ~ x + z, y ~ m·z the index is alpha_x · gamma_{m:z} (Hayes 2015, doi:10.1080/00273171.2014.962683, from memory).
+    # With m ~ x + z, y ~ m·z the index is alpha_x · gamma_{m:z}
+    # (Hayes 2015, doi:10.1080/00273171.2014.962683, from memory).
     posterior = second.posterior
     product = posterior["alpha"].sel(mediator_term="x") * posterior["gamma"].sel(outcome_term="m:z")
     found = moderation_index(second.result, "z").iloc[-1]
