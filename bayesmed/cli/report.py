@@ -3,8 +3,6 @@
 from functools import partial
 from pathlib import Path
 
-import numpy as np
-
 from bayesmed.cli.printed import print_attention, print_comparison, print_words, screen, steps
 from bayesmed.core.errors import BeliefNeededError
 from bayesmed.fit.result import FitResult
@@ -21,14 +19,7 @@ def report(path: Path, folder: str, *, quiet: bool) -> int:
         say("Reading the study and its data")
         asked = read_study_file(path)
         check_folder(folder)
-        study = Study(
-            asked.frame(),
-            exposure=asked.exposure,
-            contrast=asked.contrast,
-            mediator=asked.mediator,
-            outcome=asked.outcome,
-            moderators=asked.moderators,
-        )
+        study = Study.of(asked.observe())
         # What the conclusions would refuse is better said before a fit than after it.
         points(study.observed, asked.at)
         say("Sampling" if asked.fit.method == "nuts" else "Drawing from the exact posterior")
@@ -65,11 +56,6 @@ def _fit(study: Study, asked: StudyFile) -> FitResult:
         progressbar=False,
     )
     try:
-        result = fit().result
+        return fit().result
     except BeliefNeededError:
-        result = fit(max(asked.beliefs.values(), key=lambda belief: belief.rho_sd())).result
-    shape = (asked.fit.chains, asked.fit.draws)
-    if result.shape != shape or not np.all(np.isfinite(result.flat("tau"))):
-        # A sampler that is interrupted may hand over what it has as if nothing had happened.
-        raise KeyboardInterrupt
-    return result
+        return fit(max(asked.beliefs.values(), key=lambda belief: belief.rho_sd())).result

@@ -2,10 +2,10 @@
 
 from typing import Any
 
-import numpy as np
 import pandas as pd
 import xarray as xr
 
+from bayesmed.conclusions.labelled import labelled
 from bayesmed.conclusions.view import beliefs_along_rho, effect_names, view_by_draw
 from bayesmed.fit.result import FitResult
 from bayesmed.study.points import Points, points
@@ -37,14 +37,5 @@ def effects(result: FitResult, at: Any = None, rho: Any = None) -> xr.Dataset:
 
 def _one(result: FitResult, chosen: Points, rho: Any) -> xr.Dataset:
     seen = view_by_draw(result, chosen, rho)
-    chains, draws = result.shape
-    dims = ("chain", "draw", *chosen.dims)
-    coords: dict[str, Any] = {"chain": np.arange(chains), "draw": np.arange(draws)}
-    coords.update({name: list(values) for name, values in chosen.dims.items()})
-    coords.update(chosen.scalars)
-    shape = (*chosen.shape, chains, draws)
-    variables = {}
-    for name in effect_names(seen.contrasts):
-        values = seen.draws(name).reshape(shape)
-        variables[name] = (dims, np.moveaxis(values, (-2, -1), (0, 1)))
-    return xr.Dataset(variables, coords=coords)
+    names = effect_names(seen.contrasts)
+    return xr.Dataset({name: labelled(seen.draws(name), chosen, result.shape) for name in names})

@@ -51,8 +51,7 @@ class ClaimLines:
 
     def columns(self) -> dict[str, Any]:
         """Return the moderator columns with which every table starts."""
-        names = (*self.points.dims, *self.points.scalars)
-        return {name: [point[name] for point in self.points.values] for name in names}
+        return dict(self.points.columns)
 
 
 def claim_lines(result: FitResult, at: Any, claim: Claim | None, asker: str) -> ClaimLines:

@@ -38,9 +38,7 @@ def implied_prior(result: FitResult, at: Any = None, claim: Claim | None = None,
     found = np.quantile(values, list(QUANTILES.values()), axis=1)
     beyond = values > stated.limit if stated.direction == "above" else values < stated.limit
     probability = beyond.mean(axis=1)
-    columns: dict[str, Any] = {
-        name: [point[name] for point in chosen.values] for name in (*chosen.dims, *chosen.scalars)
-    }
+    columns: dict[str, Any] = dict(chosen.columns)
     columns.update(zip(QUANTILES, found, strict=True))
     columns.update(probability=probability, mcse=np.sqrt(probability * (1 - probability) / draws))
     return pd.DataFrame({"effect": stated.effect, **columns})

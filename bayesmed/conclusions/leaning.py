@@ -36,8 +36,8 @@ def leaning(result: FitResult, at: Any = None, rho: Any = None) -> pd.DataFrame:
     tree = xr.DataTree.from_dict(
         {
             "posterior": found,
-            "log_prior": xr.Dataset({"coefficients": (("chain", "draw"), _shaped(result, _log_prior(result)))}),
-            "log_likelihood": xr.Dataset({"rows": (("chain", "draw"), _shaped(result, _log_likelihood(result)))}),
+            "log_prior": xr.Dataset({"coefficients": (("chain", "draw"), _log_prior(result).reshape(result.shape))}),
+            "log_likelihood": xr.Dataset({"rows": (("chain", "draw"), _log_likelihood(result).reshape(result.shape))}),
         }
     )
     sensitivity: pd.DataFrame = psense_summary(tree, threshold=THRESHOLD, round_to=12)
@@ -46,10 +46,6 @@ def leaning(result: FitResult, at: Any = None, rho: Any = None) -> pd.DataFrame:
     leans = table["coefficient_priors"].astype(float) >= THRESHOLD
     table["leans_on_prior"] = leans
     return table.loc[:, ["effect", "coefficient_priors", "rows", "leans_on_prior"]]
-
-
-def _shaped(result: FitResult, values: Array) -> Array:
-    return values.reshape(result.shape)
 
 
 def _log_prior(result: FitResult) -> Array:

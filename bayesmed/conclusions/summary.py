@@ -45,9 +45,7 @@ def table(seen: View, chosen: Points, claim: Claim, ci_prob: float) -> pd.DataFr
         mean, sd = seen.moments(effect)
         interval = seen.quantiles(effect, np.array([tail, 1 - tail]))
         probability, mcse = seen.probability(effect, claim)
-        columns: dict[str, Any] = {"effect": effect}
-        for name in (*chosen.dims, *chosen.scalars):
-            columns[name] = [point[name] for point in chosen.values]
+        columns: dict[str, Any] = {"effect": effect, **chosen.columns}
         columns.update(zip(STATISTICS, (mean, sd, *interval.T, probability, mcse), strict=True))
         parts.append(pd.DataFrame(columns))
     return pd.concat(parts, ignore_index=True)

@@ -12,6 +12,7 @@ from scipy.optimize import brentq
 
 from bayesmed.conclusions.accuracy import mean_with_error
 from bayesmed.conclusions.claim import Claim, as_claim
+from bayesmed.conclusions.labelled import labelled
 from bayesmed.conclusions.summary import checked_width
 from bayesmed.core.contrasts import Contrasts
 from bayesmed.core.errors import ArgumentError, FitError
@@ -59,13 +60,7 @@ class TippingResult:
     @property
     def draws(self) -> xr.DataArray:
         """Draws of the tipping correlation with dims chain, draw and one per moderator."""
-        chains, draws = self.result.shape
-        shape = (*self.points.shape, chains, draws)
-        values = np.moveaxis(self.crossings.reshape(shape), (-2, -1), (0, 1))
-        coords: dict[str, Any] = {"chain": np.arange(chains), "draw": np.arange(draws)}
-        coords.update({name: list(v) for name, v in self.points.dims.items()})
-        coords.update(self.points.scalars)
-        return xr.DataArray(values, coords=coords, dims=("chain", "draw", *self.points.dims), name="tipping_rho")
+        return labelled(self.crossings, self.points, self.result.shape).rename("tipping_rho")
 
     @cached_property
     def table(self) -> pd.DataFrame:
@@ -88,9 +83,7 @@ class TippingResult:
         )
         holds_high = (slope < 0) if self.claim.direction == "above" else (slope > 0)
         holds_low = (slope > 0) if self.claim.direction == "above" else (slope < 0)
-        columns: dict[str, Any] = {
-            name: [point[name] for point in self.points.values] for name in (*self.points.dims, *self.points.scalars)
-        }
+        columns: dict[str, Any] = dict(self.points.columns)
         columns.update(
             median=quantiles[0],
             lower=quantiles[1],
@@ -129,14 +122,11 @@ class TippingResult:
         constant, slope = self.lines
         by_draw = claim_probability(constant, slope, self.claim.limit, self.claim.direction, belief)
         value, mcse = mean_with_error(by_draw, self.result)
-        columns: dict[str, Any] = {
-            name: [point[name] for point in self.points.values] for name in (*self.points.dims, *self.points.scalars)
-        }
         limit = tipping_correlation(constant, slope, self.claim.limit)
         middle = np.nanmedian(np.where(slope == 0, 0.0, limit), axis=1)
         falls = np.median(slope, axis=1) > 0 if self.claim.direction == "above" else np.median(slope, axis=1) < 0
         unlimited = np.where(falls, belief.below(middle), belief.above(middle))
-        return pd.DataFrame({**columns, "probability": value, "mcse": mcse, "unlimited": unlimited})
+        return pd.DataFrame({**self.points.columns, "probability": value, "mcse": mcse, "unlimited": unlimited})
 
     def curve(self, moderator: str, values: Sequence[Any] | None = None) -> pd.DataFrame:
         """Return the tipping correlation along a moderator: its values, median, lower and upper."""

@@ -157,7 +157,7 @@ def covariance_tipping(result: FitResult, rho: Any, at: Any = None, claim: Claim
         needed = stated.limit - effect if stated.effect == "indirect" else effect - stated.limit
         median, lower, upper = np.quantile(needed, [0.5, TAIL, 1 - TAIL], axis=1)
         columns: dict[str, Any] = {"rho": value}
-        columns.update({name: [point[name] for point in chosen.values] for name in chosen.names})
+        columns.update(chosen.columns)
         parts.append(pd.DataFrame({**columns, "median": median, "lower": lower, "upper": upper}))
     return pd.concat(parts, ignore_index=True)
 

@@ -54,7 +54,7 @@ class Fit:
     @property
     def study(self) -> Study:
         """The study that was fitted."""
-        return Study._of(self.result.observed)
+        return Study.of(self.result.observed)
 
     @property
     def posterior(self) -> xr.Dataset:

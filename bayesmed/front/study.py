@@ -65,7 +65,8 @@ class Study:
         )
 
     @classmethod
-    def _of(cls, observed: Observed) -> "Study":
+    def of(cls, observed: Observed) -> "Study":
+        """Return the study of what was observed, checked before."""
         study = cls.__new__(cls)
         study.observed = observed
         return study

@@ -10,12 +10,12 @@ import numpy as np
 from scipy import stats
 
 from bayesmed.core.mapping import INFORMING_RESIDUAL, Array
-from bayesmed.study.rank import DEPENDENT, Deficiency, rank_deficiencies
+from bayesmed.study.rank import DEPENDENT
 
 if TYPE_CHECKING:
     from bayesmed.study.observe import Observed
 
-__all__ = ["WEAK_F", "Deficiency", "Informed", "informed", "rank_deficiencies"]
+__all__ = ["WEAK_F", "Informed", "first_stage_p", "informed"]
 
 WEAK_F = 10.0
 """Below this first-stage F an instrument is called weak: Staiger & Stock 1997 (doi:10.2307/2171753), a rule

@@ -51,6 +51,11 @@ class Points:
         """Every column that is set to a value."""
         return (*self.dims, *self.scalars)
 
+    @property
+    def columns(self) -> dict[str, list[Any]]:
+        """Each column's value at every point: how a table with a row a point begins."""
+        return {name: [point[name] for point in self.values] for name in self.names}
+
 
 def points(observed: Observed, at: Mapping[str, Any] | None = None) -> Points:
     """Return the points that `at` means.

@@ -156,18 +156,18 @@ def test_draws_of_an_interrupted_sampler_are_not_taken_for_whole(
     quick: Write, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     """nutpie answers an interrupt with what it has, shorter chains filled up with nan."""
-    from bayesmed.front.fit import Fit
-    from bayesmed.front.study import Study
+    import nutpie
 
-    fit = Study.fit
+    sample = nutpie.sample
 
-    def cut_short(self: Study, *arguments: object, **options: object) -> Fit:
-        made = fit(self, *arguments, **options)  # type: ignore[arg-type]
-        made.result.tree["posterior"]["tau"][:, 50:] = float("nan")
-        return made
+    def cut_short(*arguments: object, **options: object) -> object:
+        tree = sample(*arguments, **options)
+        tree["posterior"]["tau"][:, 50:] = float("nan")
+        return tree
 
-    monkeypatch.setattr(Study, "fit", cut_short)
-    assert main(["report", str(quick()), "--out", str(tmp_path / "out"), "--quiet"]) == 130
+    monkeypatch.setattr(nutpie, "sample", cut_short)
+    path = quick(**{'method = "exact"': 'method = "nuts"\ntune = 50'})
+    assert main(["report", str(path), "--out", str(tmp_path / "out"), "--quiet"]) == 130
     assert not (tmp_path / "out").exists()
 
 

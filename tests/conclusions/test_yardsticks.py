@@ -31,7 +31,7 @@ def world(rows, k, seed):
     return pd.DataFrame({"x": x, "m": m, "y": y, "c": c, "d": d, "z": z, "site": site, "u": u})
 
 
-@pytest.mark.parametrize("k", [0.5, 1.0, 1.5])
+@pytest.mark.parametrize("k", [0.5, 1.0, 2.0])
 def test_an_actual_cause_of_that_strength_leaves_that_rho(k):
     """The truth is the correlation of the structural residuals with U left out; the yardstick sees c alone."""
     data = world(400_000, k, seed=int(10 * k))
