@@ -137,7 +137,7 @@ class TippingResult:
                 raise ArgumentError(
                     f"curve: moderator={moderator!r} is not a numeric column of this study; give values=[…]"
                 )
-            values = np.linspace(float(column.min()), float(column.max()), 41).tolist()
+            values = np.linspace(*observed.span(moderator), 41).tolist()
         fixed = dict(self.points.scalars)
         along = tipping(self.result, {**fixed, moderator: list(values)}, self.claim, self.ci_prob)
         return along.table
