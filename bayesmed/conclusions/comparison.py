@@ -9,7 +9,7 @@ import numpy as np
 import pandas as pd
 
 from bayesmed.conclusions.claim import CLOSE, HOLDS, Claim, as_claim
-from bayesmed.conclusions.summary import checked_width, table
+from bayesmed.conclusions.summary import checked_width, stacked
 from bayesmed.conclusions.view import View, effect_names, view
 from bayesmed.conclusions.words import listed, point_text, probability_text
 from bayesmed.core.errors import ArgumentError
@@ -86,7 +86,7 @@ def compare(
             raise ArgumentError(f"compare: label {label!r} must be text that is not blank")
     accepted = {label: as_belief(prior) for label, prior in beliefs.items()}
     chosen, stated, width = points(result.observed, at), as_claim(claim), checked_width(ci_prob)
-    parts, routes, views = [], {}, {}
+    routes, views = {}, {}
     for label, belief in accepted.items():
         seen = views[label] = view(result, chosen, belief)
         if seen.route:
@@ -97,10 +97,8 @@ def compare(
                 f"{'indirect' if 'indirect' in stated.effect else 'direct'!r} effect here, since the outcome "
                 "equation has no term of exposure with mediator; claim that one instead"
             )
-        part = table(seen, chosen, stated, width)
-        part.insert(0, "prior", label)
-        parts.append(part)
-    joined = pd.concat(parts, ignore_index=True)
+    joined = stacked(list(views.values()), chosen, stated, width)
+    joined.insert(0, "prior", np.repeat(np.array(list(views), dtype=object), len(joined) // len(views)))
     judged = zip(joined["effect"], joined["probability"], joined["mcse"], strict=True)
     joined["verdict"] = [stated.verdict(p, e) if effect == stated.effect else "" for effect, p, e in judged]
     return ComparisonResult(result, joined, accepted, stated, chosen, width, routes, views)

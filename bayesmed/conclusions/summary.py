@@ -39,16 +39,23 @@ def rho_grid(
 
 def table(seen: View, chosen: Points, claim: Claim, ci_prob: float) -> pd.DataFrame:
     """Return the long table of one view: a row per effect and moderator point."""
+    return stacked([seen], chosen, claim, ci_prob)
+
+
+def stacked(views: list[View], chosen: Points, claim: Claim, ci_prob: float) -> pd.DataFrame:
+    """Return the long tables of several views under each other: by view, effect and moderator point."""
     tail = (1 - ci_prob) / 2
-    parts = []
-    for effect in effect_names(seen.contrasts):
-        mean, sd = seen.moments(effect)
-        interval = seen.quantiles(effect, np.array([tail, 1 - tail]))
-        probability, mcse = seen.probability(effect, claim)
-        columns: dict[str, Any] = {"effect": effect, **chosen.columns}
-        columns.update(zip(STATISTICS, (mean, sd, *interval.T, probability, mcse), strict=True))
-        parts.append(pd.DataFrame(columns))
-    return pd.concat(parts, ignore_index=True)
+    names = [effect_names(seen.contrasts) for seen in views]
+    found = []
+    for seen, effects in zip(views, names, strict=True):
+        for effect in effects:
+            interval = seen.quantiles(effect, np.array([tail, 1 - tail]))
+            found.append([*seen.moments(effect), *interval.T, *seen.probability(effect, claim)])
+    blocks = sum(map(len, names))
+    columns: dict[str, Any] = {"effect": np.repeat(np.concatenate(names).astype(object), len(chosen.values))}
+    columns.update({name: values * blocks for name, values in chosen.columns.items()})
+    columns.update(zip(STATISTICS, np.concatenate(found, axis=1), strict=True))
+    return pd.DataFrame(columns)
 
 
 def checked_width(ci_prob: Any) -> float:
@@ -59,9 +66,6 @@ def checked_width(ci_prob: Any) -> float:
 
 
 def _by_rho(result: FitResult, chosen: Points, claim: Claim, ci_prob: float, fixed: list[float]) -> pd.DataFrame:
-    parts = []
-    for value in fixed:
-        part = table(view(result, chosen, value), chosen, claim, ci_prob)
-        part.insert(0, "rho", value)
-        parts.append(part)
-    return pd.concat(parts, ignore_index=True)
+    joined = stacked([view(result, chosen, value) for value in fixed], chosen, claim, ci_prob)
+    joined.insert(0, "rho", np.repeat(fixed, len(joined) // len(fixed)))
+    return joined

@@ -63,7 +63,7 @@ class View:
 
     def probability_by_draw(self, effect: str, claim: Claim) -> Array:
         """Return, per point and draw, the belief's probability that the claim's statement is true."""
-        if self.rho is None:
+        if self.rho is None and not is_fixed(self.belief):
             constant, slope = self.contrasts.line(effect)
             return claim_probability(constant, slope, claim.limit, claim.direction, self.belief)
         values = self.draws(effect)

@@ -129,7 +129,8 @@ def _bilinear(matrices: Array, left: Array, right: Array) -> Array:
     points, q, p = matrices.shape
     # One matrix product over all points, then a row-wise product: no (point, draw, term, term) array.
     product = left @ matrices.transpose(1, 0, 2).reshape(q, points * p)
-    return np.asarray(np.einsum("spk,sk->ps", product.reshape(-1, points, p), right, optimize=True))
+    # Everything after this runs along the draws of a point, which should lie side by side.
+    return np.ascontiguousarray(np.einsum("spk,sk->ps", product.reshape(-1, points, p), right, optimize=True))
 
 
 def joined(parts: list[Contrasts]) -> Contrasts:

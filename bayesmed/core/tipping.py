@@ -6,8 +6,9 @@ the belief's mass on the right side of ``rho*``. No draws of rho are needed, so 
 numbers.
 """
 
-from collections.abc import Callable
-from typing import Literal, Protocol
+from collections.abc import Callable, Hashable
+from functools import lru_cache
+from typing import Any, Literal, Protocol
 
 import numpy as np
 from scipy.optimize import elementwise
@@ -15,8 +16,12 @@ from scipy.optimize import elementwise
 from bayesmed.core.mapping import Array, odds
 
 Direction = Literal["above", "below"]
-STRATA = 16
-"""Stratified correlations per draw from which the search for a quantile starts."""
+TINY = 1e-150
+"""Numbers whose squares still have all their digits are larger than this, and smaller than its inverse."""
+APART = 2.0
+"""Half the width of the bracket from which the search for a quantile starts, in standard errors of its order."""
+CELLS = 65_536
+"""Cells of a support between whose ends a distribution function is interpolated while a quantile is searched for."""
 
 
 class Belief(Protocol):
@@ -34,6 +39,14 @@ class Belief(Protocol):
         """Return quantiles."""
         ...
 
+    def atoms(self) -> tuple[tuple[float, float], ...]:
+        """Return (value, probability) of every single value that has a probability of its own."""
+        ...
+
+    def support(self) -> tuple[float, float]:
+        """Return the ends of the range in which rho lies."""
+        ...
+
     def odds_moments(self) -> tuple[float, float]:
         """Return E[r] and E[r²], infinite where they are."""
         ...
@@ -45,10 +58,14 @@ def tipping_correlation(constant: Array, slope: Array, limit: float) -> Array:
     Written with a hypotenuse rather than a ratio, so that a slope near zero gives ±1 and not an overflow.
     """
     gap = constant - limit
-    length = np.hypot(gap, slope)
+    length = np.sqrt(gap * gap + slope * slope)
+    if length.size and not TINY < length.min() <= length.max() < 1 / TINY:
+        # Squares would lose digits, or everything.
+        length = np.hypot(gap, slope)
     with np.errstate(invalid="ignore", divide="ignore"):
-        crossing = np.sign(slope) * gap / length
-    return np.where(slope == 0, np.nan, crossing)
+        crossing = np.copysign(gap, gap * np.sign(slope)) / length
+    crossing[slope == 0] = np.nan
+    return np.asarray(crossing)
 
 
 def claim_probability(constant: Array, slope: Array, limit: float, direction: Direction, belief: Belief) -> Array:
@@ -63,8 +80,14 @@ def claim_probability(constant: Array, slope: Array, limit: float, direction: Di
     certain = (constant > limit) if direction == "above" else (constant < limit)
     flat = slope == 0
     safe = np.where(flat, 0.0, crossing)
-    probability = np.where(lower_side, belief.below(safe), belief.above(safe))
-    return np.where(flat, certain.astype(float), probability)
+    # One side or the other, never both: distribution functions are what this costs.
+    if lower_side.all():
+        return np.asarray(belief.below(safe))
+    probability = certain.astype(float)
+    upper_side = ~lower_side & ~flat
+    probability[lower_side] = belief.below(safe[lower_side])
+    probability[upper_side] = belief.above(safe[upper_side])
+    return probability
 
 
 def effect_moments(constant: Array, slope: Array, belief: Belief) -> tuple[Array, Array]:
@@ -111,30 +134,73 @@ def effect_quantiles(constant: Array, slope: Array, belief: Belief, probabilitie
     -------
     array, shape (point, quantile)
     """
-    points, count = constant.shape[0], len(probabilities)
-    strata = (np.arange(STRATA) + uniforms[:, None]) / STRATA
-    r = odds(np.clip(belief.ppf(strata), -1 + 1e-12, 1 - 1e-12))
-    start = np.empty((points, count))
-    width = np.empty((points, count))
-    near = np.array([0.97, 1.03])
-    for point in range(points):
-        values = (constant[point, :, None] - slope[point, :, None] * r).ravel()
-        start[point] = np.quantile(values, probabilities)
-        tail = np.minimum(probabilities, 1 - probabilities)
-        apart = np.quantile(
-            values,
-            [np.abs((probabilities > 0.5) - near[0] * tail), np.abs((probabilities > 0.5) - near[1] * tail)],
-        )
-        width[point] = np.abs(apart[0] - apart[1])
+    r = odds(np.clip(belief.ppf(uniforms), -1 + 1e-12, 1 - 1e-12))
+    values = constant - slope * r
+    draws = values.shape[1]
+    apart = np.maximum(APART * np.sqrt(probabilities * (1 - probabilities) / draws), 1 / draws)
+    around = np.quantile(values, np.clip(probabilities + np.multiply.outer([-1, 0, 1], apart), 0, 1).ravel(), axis=1)
+    low, start, high = around.reshape(3, len(probabilities), -1).transpose(0, 2, 1)
     scale = np.maximum(constant.std(axis=1, keepdims=True), 1e-300)
-    width = np.maximum(width, 1e-6 * scale)
+    width = np.maximum(high - low, 1e-6 * scale)
+    below = _lower_probability(constant, slope, belief)
 
     def gap(value: Array, point: Array, probability: Array) -> Array:
-        index = point.astype(int)
-        below = claim_probability(constant[index] - value[:, None], slope[index], 0.0, "below", belief)
-        return below.mean(axis=-1) - probability
+        return below(value, point.astype(int)) - probability
 
     return _invert(gap, start, width, probabilities)
+
+
+def _lower_probability(constant: Array, slope: Array, belief: Belief) -> Callable[[Array, Array], Array]:
+    """Return P(effect < value) at points, over draws and belief, as a function of (value, point).
+
+    An effect is below v where r lies on one side of ``(constant - v) / slope``, so that per draw the distribution
+    function of the belief is taken or its complement.
+    """
+    if belief.atoms() or not np.all(slope):
+
+        def exact(value: Array, point: Array) -> Array:
+            shifted = constant[point] - value[:, None]
+            return np.asarray(claim_probability(shifted, slope[point], 0.0, "below", belief).mean(axis=-1))
+
+        return exact
+    table = _table(belief)
+    intercept, rate = constant / slope, 1 / slope
+    sign = -np.sign(slope) / slope.shape[1]
+    base = (slope > 0).mean(axis=1)
+
+    def tabled(value: Array, point: Array) -> Array:
+        crossing = intercept[point] - value[:, None] * rate[point]
+        return np.asarray(base[point] + np.einsum("ij,ij->i", sign[point], table(crossing)))
+
+    return tabled
+
+
+def _table(belief: Belief) -> Callable[[Array], Array]:
+    """Return P(r < x) of a belief without atoms, interpolated between many places.
+
+    Places are equally far apart in the arc tangent of r, the arc sine of rho, where densities infinite at ±1 are finite,
+    and lie between the ends of the support, where distribution functions may have kinks. A smooth one is off by under
+    1e-9 between neighbours.
+    """
+    values: Array = _tabulated(belief) if isinstance(belief, Hashable) else _tabulated.__wrapped__(belief)
+    steps = np.append(np.diff(values), 0.0)
+    lower, upper = np.arcsin(belief.support())
+
+    def below(r: Array) -> Array:
+        place = (np.clip(np.arctan(r), lower, upper) - lower) * (CELLS / (upper - lower))
+        cell = place.astype(np.intp)
+        place -= cell
+        place *= steps[cell]
+        place += values[cell]
+        return np.asarray(place)
+
+    return below
+
+
+@lru_cache(maxsize=64)
+def _tabulated(belief: Any) -> Array:
+    lower, upper = np.arcsin(belief.support())
+    return np.asarray(belief.below(np.sin(np.linspace(lower, upper, CELLS + 1))))
 
 
 def _invert(gap: Callable[[Array, Array, Array], Array], start: Array, width: Array, probabilities: Array) -> Array:
@@ -145,6 +211,6 @@ def _invert(gap: Callable[[Array, Array, Array], Array], start: Array, width: Ar
     bracket = elementwise.bracket_root(
         gap, start.ravel() - width.ravel(), start.ravel() + width.ravel(), args=(index, target), maxiter=200
     )
-    root = elementwise.find_root(gap, bracket.bracket, args=(index, target), tolerances={"xrtol": 1e-10, "fatol": 1e-9})
+    root = elementwise.find_root(gap, bracket.bracket, args=(index, target), tolerances={"xrtol": 1e-10, "fatol": 1e-8})
     # With atoms the function may jump over zero: the point of the jump is the quantile.
     return np.asarray(np.where(root.success, root.x, start.ravel())).reshape(points, count)
