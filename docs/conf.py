@@ -1,0 +1,59 @@
+"""Sphinx settings: pages are run as they are built, and every warning is an error."""
+
+import os
+import sys
+from importlib import metadata
+from pathlib import Path
+
+sys.path.insert(0, str(Path(__file__).parent / "_extensions"))
+
+# Kernels are processes of their own; threads of linear algebra and colours would only get in the way.
+os.environ.update(OMP_NUM_THREADS="1", OPENBLAS_NUM_THREADS="1", NO_COLOR="1", COLUMNS="110")
+os.environ["PYDEVD_DISABLE_FILE_VALIDATION"] = "1"
+os.environ["PYTHONPATH"] = os.pathsep.join([str(Path(__file__).parents[1]), os.environ.get("PYTHONPATH", "")])
+
+project = "bayesmed"
+release = metadata.version("bayesmed")
+author = "the authors of bayesmed"
+project_copyright = "the authors of bayesmed, Apache-2.0"
+
+extensions = ["myst_nb", "sphinx.ext.autodoc", "numpydoc", "mathml", "catalogue"]
+html_math_renderer = "mathml"
+exclude_patterns = ["_build", "LICENSE"]
+root_doc = "index"
+nitpicky = True
+
+myst_enable_extensions = ["deflist", "dollarmath", "colon_fence"]
+myst_heading_anchors = 3
+suppress_warnings = ["toc.empty_glob"]
+
+nb_execution_mode = "inline"
+nb_execution_raise_on_error = True
+nb_execution_timeout = 300
+nb_execution_in_temp = True
+nb_execution_show_tb = True
+nb_merge_streams = True
+
+autodoc_typehints = "none"
+autodoc_member_order = "bysource"
+autodoc_default_options = {"show-inheritance": False}
+numpydoc_show_class_members = False
+numpydoc_validation_checks: set[str] = set()
+
+html_theme = "pydata_sphinx_theme"
+html_title = "bayesmed"
+html_static_path = ["_static"]
+html_css_files = ["pages.css"]
+html_show_sourcelink = False
+html_copy_source = False
+html_theme_options = {
+    "show_prev_next": True,
+    "navigation_with_keys": False,
+    "secondary_sidebar_items": ["page-toc"],
+    "footer_start": ["copyright"],
+    "footer_end": [],
+    "search_bar_text": "Search",
+    "pygments_light_style": "default",
+    "pygments_dark_style": "github-dark",
+}
+html_sidebars = {"index": []}
