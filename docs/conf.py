@@ -4,6 +4,7 @@ import os
 import sys
 from importlib import metadata
 from pathlib import Path
+from typing import Any
 
 sys.path.insert(0, str(Path(__file__).parent / "_extensions"))
 
@@ -25,7 +26,6 @@ nitpicky = True
 
 myst_enable_extensions = ["deflist", "dollarmath", "colon_fence"]
 myst_heading_anchors = 3
-suppress_warnings = ["toc.empty_glob"]
 
 nb_execution_mode = "inline"
 nb_execution_raise_on_error = True
@@ -36,9 +36,7 @@ nb_merge_streams = True
 
 autodoc_typehints = "none"
 autodoc_member_order = "bysource"
-autodoc_default_options = {"show-inheritance": False}
 numpydoc_show_class_members = False
-numpydoc_validation_checks: set[str] = set()
 
 html_theme = "pydata_sphinx_theme"
 html_title = "bayesmed"
@@ -57,3 +55,13 @@ html_theme_options = {
     "pygments_dark_style": "github-dark",
 }
 html_sidebars = {"index": []}
+
+
+def setup(app: Any) -> None:
+    """Leave out the page of timings until `tests/benchmarks` has written it."""
+    app.connect("source-read", _list_performance)
+
+
+def _list_performance(app: Any, page: str, source: list[str]) -> None:
+    if page == "more" and Path(app.srcdir, "performance.md").exists():
+        source[0] = source[0].replace("calibration\n", "calibration\nperformance\n")

@@ -97,7 +97,7 @@ def contour(mapped: xr.DataArray, level: float | None = None) -> pd.DataFrame:
     Parameters
     ----------
     mapped : xarray.DataArray
-        Of :func:`prior_map`.
+        Of ``Fit.prior_map``.
     level : float, optional
         Between 0 and 1; what the claim requires if left out.
 

@@ -54,7 +54,7 @@ def from_quantiles(
 
     See Also
     --------
-    quantile_gaps : what a prior has where something else was stated.
+    bayesmed.priors.quantile_gaps : what a prior has where something else was stated.
 
     Examples
     --------

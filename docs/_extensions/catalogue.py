@@ -22,10 +22,15 @@ class Catalogue(SphinxDirective):
 
     def run(self) -> list[nodes.Node]:
         """Return the tables with a rubric each."""
-        made: list[nodes.Node] = []
-        for title, base in (("Errors", errors.BayesmedError), ("Warnings", errors.BayesmedWarning)):
-            made += [nodes.rubric("", title), _table([each for each in types() if issubclass(each, base)])]
-        return made
+        return tables()
+
+
+def tables() -> list[nodes.Node]:
+    """Return a rubric and a table of the errors, then the same of the warnings."""
+    made: list[nodes.Node] = []
+    for title, base in (("Errors", errors.BayesmedError), ("Warnings", errors.BayesmedWarning)):
+        made += [nodes.rubric("", title), _table([each for each in types() if issubclass(each, base)])]
+    return made
 
 
 def _table(rows: list[type[BaseException]]) -> nodes.table:
