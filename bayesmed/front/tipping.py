@@ -7,6 +7,7 @@ import pandas as pd
 import xarray as xr
 
 from bayesmed.conclusions.claim import Claim
+from bayesmed.conclusions.shares import shares
 from bayesmed.conclusions.tipping import CAUTION, TippingResult
 from bayesmed.front.shown import as_html, as_text
 
@@ -70,6 +71,15 @@ class Tipping:
     def curve(self, moderator: str, values: Sequence[Any] | None = None) -> pd.DataFrame:
         """Return the tipping correlation along a moderator, at `values` or over its observed range."""
         return self._result.curve(moderator, values)
+
+    def shares(self, r2_mediator: Sequence[float] = (0.05, 0.1, 0.2, 0.4)) -> pd.DataFrame:
+        """Return the shares of residual variance that one common cause must explain for the claim to tip.
+
+        Columns: r2_mediator as given; sign of the correlation that overturns; r2_outcome with lower and upper, the
+        share of the outcome's structural residual variance needed beside it, infinite where none is enough;
+        given_mediator, the same as a regression that holds the mediator shows it.
+        """
+        return shares(self._result, r2_mediator)
 
     def __repr__(self) -> str:
         return "\n".join([self._heading(), "", as_text(self.table), "", CAUTION])
