@@ -18,7 +18,7 @@ release = metadata.version("bayesmed")
 author = "the authors of bayesmed"
 project_copyright = "the authors of bayesmed, Apache-2.0"
 
-extensions = ["myst_nb", "sphinx.ext.autodoc", "numpydoc", "mathml", "catalogue"]
+extensions = ["myst_nb", "sphinx.ext.autodoc", "numpydoc", "mathml", "catalogue", "one_kernel"]
 html_math_renderer = "mathml"
 exclude_patterns = ["_build", "LICENSE"]
 root_doc = "index"
@@ -30,7 +30,6 @@ myst_heading_anchors = 3
 nb_execution_mode = "inline"
 nb_execution_raise_on_error = True
 nb_execution_timeout = 300
-nb_execution_in_temp = True
 nb_execution_show_tb = True
 nb_merge_streams = True
 
@@ -54,7 +53,7 @@ html_theme_options = {
     "pygments_light_style": "default",
     "pygments_dark_style": "github-dark",
 }
-html_sidebars = {"index": []}
+html_sidebars = {"index": [], "start": []}
 
 
 def setup(app: Any) -> None:
