@@ -35,12 +35,12 @@ def mean_with_error(values: Array, result: FitResult, weights: Array | None = No
 
     With importance weights, the error is that of the ratio they form, by linearisation.
 
-    Values are probabilities per draw. Where every draw agrees on 0 or 1 the sample spread is zero, yet the
-    probability is only known to be within about one effective draw of it, which is then the error given.
+    Values are probabilities per draw. Where every draw agrees, on 0, on 1, or on a mixture of atoms, the sample
+    spread is zero, yet the probability is only known to be within about one effective draw, which is then the error.
     """
     mean = np.average(values, axis=1, weights=weights)
     scaled = values if weights is None else (values - mean[:, None]) * weights * len(weights)
     ess = effective_draws(scaled, result)
     error = scaled.std(axis=1) / np.sqrt(ess)
-    unanimous = (values.max(axis=1) == values.min(axis=1)) & ((mean == 0) | (mean == 1))
+    unanimous = values.max(axis=1) == values.min(axis=1)
     return mean, np.where(unanimous, 1 / ess, error)

@@ -1,19 +1,20 @@
 """Several beliefs about the correlation side by side: table, verdicts, and which belief changes which."""
 
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
 
+import numpy as np
 import pandas as pd
 
 from bayesmed.conclusions.claim import CLOSE, HOLDS, Claim, as_claim
 from bayesmed.conclusions.summary import checked_width, table
-from bayesmed.conclusions.view import effect_names, view
+from bayesmed.conclusions.view import View, effect_names, view
 from bayesmed.conclusions.words import listed, point_text, probability_text
 from bayesmed.core.errors import ArgumentError
 from bayesmed.fit.result import FitResult
-from bayesmed.priors.by_group import as_belief
+from bayesmed.priors.by_group import ByGroup, as_belief
 from bayesmed.study.points import Points, points
 
 
@@ -31,6 +32,8 @@ class ComparisonResult:
     points : Points
     routes : dict of str to str
         How each belief was brought to draws in which rho is informed; empty where one set of draws serves all.
+    views : dict of str to View
+        The fit as seen under each belief.
     """
 
     result: FitResult
@@ -40,6 +43,14 @@ class ComparisonResult:
     points: Points
     ci_prob: float
     routes: dict[str, str]
+    views: dict[str, View]
+
+    @cached_property
+    def rho(self) -> pd.DataFrame:
+        """Mean and SD of rho before and after the data: prior, group if beliefs differ by group, and four numbers."""
+        rows = [row for label, belief in self.beliefs.items() for row in _moved(label, belief, self.views[label])]
+        found = pd.DataFrame(rows)
+        return found.drop(columns="group") if found["group"].isna().all() else found
 
     @cached_property
     def claimed(self) -> pd.DataFrame:
@@ -75,9 +86,9 @@ def compare(
             raise ArgumentError(f"compare: label {label!r} must be text that is not blank")
     accepted = {label: as_belief(prior) for label, prior in beliefs.items()}
     chosen, stated, width = points(result.observed, at), as_claim(claim), checked_width(ci_prob)
-    parts, routes = [], {}
+    parts, routes, views = [], {}, {}
     for label, belief in accepted.items():
-        seen = view(result, chosen, belief)
+        seen = views[label] = view(result, chosen, belief)
         if seen.route:
             routes[label] = seen.route
         if stated.effect not in effect_names(seen.contrasts):
@@ -92,7 +103,18 @@ def compare(
     joined = pd.concat(parts, ignore_index=True)
     judged = zip(joined["effect"], joined["probability"], joined["mcse"], strict=True)
     joined["verdict"] = [stated.verdict(p, e) if effect == stated.effect else "" for effect, p, e in judged]
-    return ComparisonResult(result, joined, accepted, stated, chosen, width, routes)
+    return ComparisonResult(result, joined, accepted, stated, chosen, width, routes, views)
+
+
+def _moved(label: str, belief: Any, seen: View) -> Iterator[dict[str, Any]]:
+    """Yield the prior's and the posterior's mean and SD of rho, once or once a group."""
+    for group, prior in belief.items if isinstance(belief, ByGroup) else ((None, belief),):
+        mean, sd = prior.rho_mean(), prior.rho_sd()
+        before = {"prior": label, "group": group, "prior_mean": mean, "prior_sd": sd}
+        if seen.rho is not None and seen.result.settings.learn:
+            mean = float(np.average(seen.rho, weights=seen.weights))
+            sd = float(np.sqrt(np.average((seen.rho - mean) ** 2, weights=seen.weights)))
+        yield {**before, "posterior_mean": mean, "posterior_sd": sd}
 
 
 def _shift(rows: pd.DataFrame, reference: str, where: str) -> str:

@@ -89,7 +89,8 @@ def moderation_index(
     chosen = points(observed, {moderator: list(wanted), **held})
     if len(chosen.values) < 2:
         raise ArgumentError(f"values={values!r}: a contrast needs at least two values of {moderator!r}")
-    _warn_of_spread(result, moderator)
+    if observed.published is None:
+        _warn_of_spread(result, moderator)
     numeric = kind_of(observed.frame[moderator], coded=moderator in coded_columns(observed.formulas)) == "numeric"
     linear = _is_linear(result, moderator, held) if numeric else None
     levels = list(chosen.dims[moderator])
@@ -123,8 +124,7 @@ def _default_values(observed: Observed, moderator: str) -> tuple[Any, ...]:
 
 def _is_linear(result: FitResult, moderator: str, held: Mapping[str, Any]) -> bool:
     """True if both parts of every draw's indirect effect lie on straight lines along the observed range."""
-    column = result.observed.frame[moderator]
-    along = np.linspace(float(column.min()), float(column.max()), PROBES)
+    along = np.linspace(*result.observed.span(moderator), PROBES)
     probed = points(result.observed, {moderator: along.tolist(), **held})
     share = ((along - along[0]) / (along[-1] - along[0]))[:, None]
     for values in result.replaced().contrasts(probed).line("indirect"):

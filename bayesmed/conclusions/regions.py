@@ -50,7 +50,8 @@ def regions(
     prior : prior or number
         The belief about rho.
     moderator : str
-        Searched over its observed range; a categorical, boolean, coded or at most five-valued one level by level.
+        Searched over its observed range (two SDs about its mean where there are only published figures); a categorical,
+        boolean, coded or at most five-valued one level by level.
     claim : Claim, optional
     reading : "pointwise" or "simultaneous"
         Pointwise, a value belongs to a region if the claim's probability there reaches what is required.
@@ -65,9 +66,9 @@ def regions(
     pandas.DataFrame
         One row a region, or a level. from, to: its edges. from_mcse, to_mcse: their Monte Carlo errors, which are
         those of the probability over its slope, nan where the observed range ends or a level stands. share: of
-        the rows used that lie inside. joint, joint_mcse: the probability that the claim is true over the whole
-        region at once (for levels: at all levels shown), on a grid of 101 values (21 where
-        the outcome is not linear in the mediator). No region, no rows.
+        the rows used that lie inside, nan where there are only published figures. joint, joint_mcse: the probability
+        that the claim is true over the whole region at once (for levels: at all levels shown), on a grid of 101 values
+        (21 where the outcome is not linear in the mediator). No region, no rows.
 
     Raises
     ------
@@ -189,8 +190,9 @@ def _by_level(search: _Search, levels: list[Any], reading: str) -> list[tuple[An
 
 
 def _by_range(search: _Search, reading: str) -> list[tuple[Any, ...]]:
-    column = search.result.observed.frame[search.moderator].to_numpy(dtype=float)
-    low, high = float(column.min()), float(column.max())
+    observed = search.result.observed
+    column = observed.frame[search.moderator].to_numpy(dtype=float)
+    low, high = observed.span(search.moderator)
     rows = []
     for start, stop in _intervals(search, np.linspace(low, high, search.size)):
         errors = [np.nan if end in (low, high) else _edge_error(search, end, low, high) for end in (start, stop)]
@@ -199,7 +201,8 @@ def _by_range(search: _Search, reading: str) -> list[tuple[Any, ...]]:
             grid, truth, errors = _cut(search, grid, errors)
         else:
             truth = search.truth(grid)
-        share = float(np.mean((column >= grid[0]) & (column <= grid[-1])))
+        inside = (column >= grid[0]) & (column <= grid[-1])
+        share = float(np.mean(inside)) if observed.published is None else np.nan
         rows.append((float(grid[0]), float(grid[-1]), *errors, share, *truth.joint(slice(None))))
     return rows
 

@@ -18,8 +18,10 @@ from bayesmed.core.contrasts import Contrasts
 from bayesmed.core.errors import ArgumentError, FitError
 from bayesmed.core.mapping import Array, odds
 from bayesmed.core.tipping import claim_probability, tipping_correlation
+from bayesmed.fit.grouped import GroupedResult
 from bayesmed.fit.result import FitResult
 from bayesmed.priors.accept import coerce
+from bayesmed.priors.by_group import ByGroup
 from bayesmed.study.points import Points, points
 
 STEPS = np.linspace(0.02, 0.98, 49)
@@ -118,15 +120,28 @@ class TippingResult:
         data, were the tipping correlation at its posterior median. What parts that from 0 and 1 is ignorance of rho;
         what parts the two is imprecision of the study.
         """
-        belief: Any = _DistributionFunction(prior) if callable(prior) else coerce(prior)
-        constant, slope = self.lines
-        by_draw = claim_probability(constant, slope, self.claim.limit, self.claim.direction, belief)
-        value, mcse = mean_with_error(by_draw, self.result)
-        limit = tipping_correlation(constant, slope, self.claim.limit)
-        middle = np.nanmedian(np.where(slope == 0, 0.0, limit), axis=1)
-        falls = np.median(slope, axis=1) > 0 if self.claim.direction == "above" else np.median(slope, axis=1) < 0
-        unlimited = np.where(falls, belief.below(middle), belief.above(middle))
+        value, mcse, unlimited = (np.empty(len(self.points.values)) for _ in range(3))
+        for belief, places in self._believed(prior):
+            constant, slope = (line[places] for line in self.lines)
+            by_draw = claim_probability(constant, slope, self.claim.limit, self.claim.direction, belief)
+            value[places], mcse[places] = mean_with_error(by_draw, self.result)
+            middle = np.nanmedian(np.where(slope == 0, 0.0, self.crossings[places]), axis=1)
+            above = self.claim.direction == "above"
+            falls = np.median(slope, axis=1) > 0 if above else np.median(slope, axis=1) < 0
+            unlimited[places] = np.where(falls, belief.below(middle), belief.above(middle))
         return pd.DataFrame({**self.points.columns, "probability": value, "mcse": mcse, "unlimited": unlimited})
+
+    def _believed(self, prior: Any) -> list[tuple[Any, list[int]]]:
+        """Return each belief with the places of the points that it is about."""
+        if not isinstance(prior, ByGroup):
+            belief = _DistributionFunction(prior) if callable(prior) else coerce(prior)
+            return [(belief, list(range(len(self.points.values))))]
+        if not isinstance(self.result, GroupedResult):
+            raise ArgumentError("probability: a ByGroup needs a fit made with rho=ByGroup(…), study.fit(rho=…)")
+        groups = self.result.groups_of(self.points)
+        if lacking := [level for level in groups if level not in prior.levels]:
+            raise ArgumentError(f"probability: the ByGroup has no belief for {', '.join(map(repr, lacking))}")
+        return [(prior.of(level), places) for level, places in groups.items()]
 
     def curve(self, moderator: str, values: Sequence[Any] | None = None) -> pd.DataFrame:
         """Return the tipping correlation along a moderator: its values, median, lower and upper."""
@@ -137,7 +152,7 @@ class TippingResult:
                 raise ArgumentError(
                     f"curve: moderator={moderator!r} is not a numeric column of this study; give values=[…]"
                 )
-            values = np.linspace(float(column.min()), float(column.max()), 41).tolist()
+            values = np.linspace(*observed.span(moderator), 41).tolist()
         fixed = dict(self.points.scalars)
         along = tipping(self.result, {**fixed, moderator: list(values)}, self.claim, self.ci_prob)
         return along.table

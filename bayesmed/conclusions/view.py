@@ -70,6 +70,19 @@ class View:
         true = values > claim.limit if claim.direction == "above" else values < claim.limit
         return true.astype(float)
 
+    @property
+    def draws_of(self) -> FitResult:
+        """The fit whose draws these are; views of one fit share them."""
+        return self.result
+
+    def mean_by_draw(self, effect: str) -> Array:
+        """Return, per point and draw, the mean of an effect over the belief, which may be infinite."""
+        if self.rho is not None:
+            return self.draws(effect)
+        constant, slope = self.contrasts.line(effect)
+        with np.errstate(invalid="ignore"):
+            return np.where(slope == 0, constant, constant - slope * self.belief.odds_moments()[0])
+
     def moments(self, effect: str) -> tuple[Array, Array]:
         """Return posterior mean and SD, each of shape (point,); infinite where they are."""
         if self.rho is None:
@@ -155,6 +168,15 @@ class GroupedView(View):
     def probability_by_draw(self, effect: str, claim: Claim) -> Array:
         """Return, per point and draw, the belief's probability that the claim's statement is true."""
         return self._gathered(lambda seen: seen.probability_by_draw(effect, claim))
+
+    def mean_by_draw(self, effect: str) -> Array:
+        """Return, per point and draw, the mean of an effect over its group's belief."""
+        return self._gathered(lambda seen: seen.mean_by_draw(effect))
+
+    @property
+    def draws_of(self) -> FitResult:
+        """The fit whose draws these are: the first group's, as those of all groups come together."""
+        return self.pieces[0][1].result
 
     def moments(self, effect: str) -> tuple[Array, Array]:
         """Return posterior mean and SD, each of shape (point,)."""

@@ -15,6 +15,7 @@ from bayesmed.core.strength import Strength, strength
 from bayesmed.fit.grouped import refuse_grouped
 from bayesmed.fit.result import FitResult
 from bayesmed.study.designs import Design
+from bayesmed.study.observe import Observed
 from bayesmed.study.points import points
 
 TAIL = 0.025
@@ -145,7 +146,7 @@ def _blocks(result: FitResult, covariates: Covariates) -> dict[str, tuple[str, .
     observed = result.observed
     if covariates is None:
         found: dict[str, tuple[str, ...]] = {}
-        for name in observed.covariates:
+        for name in _known(observed):
             try:
                 block_strength(result, (name,))
             except ArgumentError:
@@ -168,8 +169,14 @@ def _blocks(result: FitResult, covariates: Covariates) -> dict[str, tuple[str, .
     return blocks
 
 
+def _known(observed: Observed) -> tuple[str, ...]:
+    """Return the covariates of which more than the number is known."""
+    unprinted = () if observed.published is None else observed.published.unprinted
+    return tuple(name for name in observed.covariates if name not in unprinted)
+
+
 def _check_names(result: FitResult, names: Sequence[Any]) -> None:
-    allowed = result.observed.covariates
+    allowed = _known(result.observed)
     for name in names:
         if name not in allowed:
             raise ArgumentError(f"covariates: {name!r} is no covariate of the formulas; there are {', '.join(allowed)}")

@@ -18,6 +18,8 @@ from bayesmed.priors.by_group import ByGroup
 from bayesmed.priors.coefficient_set import Coefficients
 from bayesmed.priors.named import coefficient_from_spec, from_spec, to_spec
 from bayesmed.study.observe import observe
+from bayesmed.study.printed_regressions import republished
+from bayesmed.study.published import observe_published
 
 LAYOUT = 1
 """Version of the file's layout; a file of a newer one is refused."""
@@ -27,15 +29,17 @@ def save(result: FitResult, path: str | Path) -> Path:
     """Write a fit to a NetCDF file, whole or not at all; see ``Fit.save``.
 
     The rows used by the study (only its columns) are stored in the file, since conclusions at other moderator
-    values need them.
+    values need them; of a study known by published figures, the figures.
     """
     target = Path(path)
     if not target.parent.is_dir():
         raise ArgumentError(f"save: folder {str(target.parent)!r} does not exist")
     observed = result.observed
     tree = result.tree.copy()
-    rows, kinds = _encoded(observed.frame)
-    tree["rows"] = xr.DataTree(rows)
+    kinds: list[dict[str, Any]] = []
+    if observed.published is None:
+        rows, kinds = _encoded(observed.frame)
+        tree["rows"] = xr.DataTree(rows)
     tree.attrs["bayesmed_layout"] = LAYOUT
     tree.attrs["study"] = json.dumps(
         {
@@ -45,6 +49,7 @@ def save(result: FitResult, path: str | Path) -> Path:
             "outcome": observed.outcome_formula,
             "moderators": list(observed.default_moderators),
             "columns": kinds,
+            "published": None if observed.published is None else observed.published.source,
         }
     )
     tree.attrs["joint"] = int(result.joint)
@@ -77,21 +82,18 @@ def load(path: str | Path) -> FitResult:
     if not 1 <= layout <= LAYOUT:
         raise FitError(f"load: {str(path)!r} has layout {layout}, this version of bayesmed reads 1 to {LAYOUT}")
     study = json.loads(tree.attrs["study"])
-    observed = observe(
-        _decoded(tree["rows"].to_dataset(), study["columns"]),
-        exposure=study["exposure"],
-        contrast=tuple(study["contrast"]),
-        mediator=study["mediator"],
-        outcome=study["outcome"],
-        moderators=study["moderators"],
-    )
+    roles = {name: study[name] for name in ("exposure", "contrast", "mediator", "outcome", "moderators")}
+    if (source := study.get("published")) is not None:
+        observed = observe_published(republished(source), **roles)
+    else:
+        observed = observe(_decoded(tree["rows"].to_dataset(), study["columns"]), **roles)
+        del tree["rows"]
     attributes = tree.attrs
     draws, tune, chains, seed = (int(attributes[k]) for k in ("draws", "tune", "chains", "random_seed"))
     settings = Settings(attributes["method"], draws, tune, chains, seed, bool(attributes["learn"]))
     belief = _belief(json.loads(attributes["belief"]))
     coefficients = _coefficients(json.loads(attributes["coefficients"]))
     joint = bool(attributes["joint"])
-    del tree["rows"]
     if "groups" in attributes:
         groups = json.loads(attributes["groups"])
         posterior = tree["posterior"].to_dataset()

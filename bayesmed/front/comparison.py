@@ -6,6 +6,7 @@ import pandas as pd
 
 from bayesmed.conclusions.claim import Claim
 from bayesmed.conclusions.comparison import ComparisonResult
+from bayesmed.conclusions.differences import differences
 from bayesmed.front.shown import as_html, as_text
 
 
@@ -44,6 +45,22 @@ class Comparison:
         return self._result.shifts
 
     @property
+    def rho(self) -> pd.DataFrame:
+        """Mean and SD of rho under each belief, before the data (prior_…) and after them (posterior_…).
+
+        Where the data are silent on rho the two are the same, exactly.
+        """
+        return self._result.rho
+
+    def differences(self, reference: str | None = None) -> pd.DataFrame:
+        """Return how far each belief's answer lies from that of a reference, the first belief if left out.
+
+        Columns: prior, moderators; probability, the difference of the claim's probability, and mcse; mean, the
+        difference of the effect's mean, and mean_mcse. Errors are those of differences on the same draws.
+        """
+        return differences(self._result, reference)
+
+    @property
     def claim(self) -> Claim:
         """The claim that was judged."""
         return self._result.claim
@@ -68,7 +85,16 @@ class Comparison:
         return as_html("\n".join(said), self._result.claimed.drop(columns="effect"))
 
     def _routes(self) -> list[str]:
-        return [f"{label}: {route}." for label, route in self._result.routes.items()]
+        """Say what became of each belief about rho where the data inform it."""
+        if not self._result.result.joint:
+            return []
+        moved = self.rho.set_index("prior")
+        return [
+            f"{label}: rho has mean {row['prior_mean']:.2f} and SD {row['prior_sd']:.2f} before the data, "
+            f"{row['posterior_mean']:.2f} and {row['posterior_sd']:.2f} after them"
+            + (f"; {self._result.routes[label]}." if label in self._result.routes else ".")
+            for label, row in moved.iterrows()
+        ]
 
     def _heading(self) -> str:
         claim = self.claim

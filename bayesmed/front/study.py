@@ -1,6 +1,6 @@
 """Study: data, roles and two formulas."""
 
-from collections.abc import Sequence
+from collections.abc import Callable, Mapping, Sequence
 from typing import TYPE_CHECKING, Any, Literal
 
 from bayesmed.core.errors import DataWarning, InformedWarning
@@ -86,6 +86,157 @@ class Study:
         study = cls.__new__(cls)
         study.observed = observed
         return study
+
+    @classmethod
+    def from_moments(
+        cls,
+        *,
+        mean: Any,
+        cov: Any = None,
+        corr: Any = None,
+        sd: Any = None,
+        n: int,
+        exposure: str,
+        contrast: Sequence[Any] | None = None,
+        mediator: str,
+        outcome: str,
+        moderators: Sequence[str] | None = None,
+        decimals: int | None = None,
+    ) -> "Study":
+        """Return a study from published means and covariances, or correlations and SDs, without its rows.
+
+        Formulas may hold columns, and products of exposure, mediator and one other column whose own moments are given
+        under the product's name, ``"m:z"``. What looks at single rows is left out, and :meth:`audit` says so.
+
+        Parameters
+        ----------
+        mean, sd : dict of name → figure
+            Means (None if none are printed) and, with `corr`, standard deviations. A figure is a number, or text that
+            keeps its last zeros, ``"0.50"``.
+        cov, corr : DataFrame, nested dict, or square array in the order of the names
+            Covariances with divisor n - 1, or correlations; the lower triangle is enough.
+        n : int
+            Number of rows.
+        exposure, contrast, mediator, outcome, moderators :
+            As for rows. The contrast may be left out if mean and variance are those of a 0/1 column.
+        decimals : int, optional
+            Decimals printed; as many as each figure shows if left out. See :meth:`rounding`.
+
+        Raises
+        ------
+        ArgumentError, DataError, FormulaError
+            Naming the figure, the covariances or the term at fault.
+        """
+        from bayesmed.study.moments import from_moments
+        from bayesmed.study.published import observe_published
+
+        return cls.of(
+            observe_published(
+                from_moments(mean=mean, cov=cov, corr=corr, sd=sd, n=n, decimals=decimals),
+                exposure=exposure,
+                contrast=contrast,
+                mediator=mediator,
+                outcome=outcome,
+                moderators=moderators,
+            )
+        )
+
+    @classmethod
+    def from_regressions(
+        cls,
+        *,
+        exposure: str,
+        mediator: str,
+        outcome: str,
+        mediator_on: Mapping[str, Any],
+        outcome_on: Mapping[str, Any],
+        total_on: Mapping[str, Any] | None = None,
+        n: int,
+        contrast: Sequence[Any] | None = None,
+        arms: Sequence[int] | None = None,
+        unprinted_covariates: int = 0,
+        decimals: int | None = None,
+    ) -> "Study":
+        """Return a study from its printed regressions: the mediator's, the outcome's, and the total effect's if any.
+
+        Parameters
+        ----------
+        exposure, mediator, outcome : str
+            Their names.
+        mediator_on, outcome_on, total_on : dict of term → (estimate, standard error)
+            In place of the pair, ``{"estimate": "0.466", "se": "0.100", "t": "4.646"}`` with either or both of the last
+            two. Terms are "Intercept", the exposure, in `outcome_on` the mediator, and covariates; "residual" gives
+            the residual SD. `total_on` is the outcome without the mediator. More figures than needed are weighed by
+            their rounding, and refused if they contradict each other.
+        n : int
+            Number of rows.
+        contrast : pair, optional
+            The exposure is coded 0/1 if left out.
+        arms : pair of int, optional
+            Rows without and with a 0/1 exposure.
+        unprinted_covariates : int
+            How many covariates were adjusted for and not printed.
+        decimals : int, optional
+            Decimals printed; as many as each figure shows if left out. See :meth:`rounding`.
+
+        Raises
+        ------
+        ArgumentError, DataError
+            Naming the figure that is missing, no number, or not compatible with the others.
+        """
+        from bayesmed.study.printed_regressions import from_regressions
+        from bayesmed.study.published import observe_published
+
+        published = from_regressions(
+            exposure=exposure,
+            mediator=mediator,
+            outcome=outcome,
+            mediator_on=mediator_on,
+            outcome_on=outcome_on,
+            total_on=total_on,
+            n=n,
+            arms=arms,
+            unprinted_covariates=unprinted_covariates,
+            decimals=decimals,
+            binary=contrast is None,
+        )
+        equations = published.equations(exposure, mediator, outcome)
+        pair = (0, 1) if contrast is None else contrast
+        return cls.of(observe_published(published, exposure=exposure, contrast=pair, **equations))
+
+    def rounding(
+        self,
+        ask: Callable[["Fit"], Any],
+        *,
+        draws: int = 1000,
+        chains: int = 4,
+        random_seed: int = 0,
+    ) -> Any:
+        """Return how far the rounding of published figures leaves an answer open.
+
+        Parameters
+        ----------
+        ask : callable
+            Takes a Fit and returns a number, a table, or what has one, such as
+            ``lambda fit: fit.summary(at={}, rho=bm.Uniform(-0.3, 0.3))``. It is asked of exact fits with the same
+            random numbers while each figure moves within half a unit of its last digit.
+        draws, chains, random_seed : int
+            Of those fits.
+
+        Returns
+        -------
+        pandas.DataFrame
+            The answer's table; beside each column that moves, its smallest and largest value as ``…_from`` and
+            ``…_to``. To first order in the rounding.
+
+        Raises
+        ------
+        ArgumentError
+            If the study has rows of its own.
+        """
+        from bayesmed.front.rounding import rounding
+
+        return rounding(self, ask, draws=draws, chains=chains, random_seed=random_seed)
 
     def audit(self) -> Audit:
         """Return what a careful reader would check before fitting: rows, arms, spread, rank, what informs rho."""
@@ -224,12 +375,14 @@ class Study:
         o = self.observed
         found = ", ".join(m.name for m in o.moderators) or "none"
         low, high = o.contrast
+        published = o.published is not None
+        rows = f"none; published figures, n = {o.rows.given}" if published else f"{o.rows.used} used of {o.rows.given}"
         return (
             f"Study of {o.exposure} ({low} → {high}) through {o.mediator_name} on {o.outcome_name}\n"
             f"  mediator equation  {o.mediator_formula}\n"
             f"  outcome equation   {o.outcome_formula}\n"
             f"  moderators         {found}\n"
-            f"  rows               {o.rows.used} used of {o.rows.given}"
+            f"  rows               {rows}"
         )
 
     def _repr_html_(self) -> str:

@@ -52,6 +52,9 @@ def _question(findings: Findings) -> Iterator[str]:
         "Carlo errors of that."
     )
     rows = observed.rows
+    if observed.published is not None:
+        yield f"The study is known by its published figures alone (n = {rows.given}): no row was seen."
+        return
     left_out = f"; {rows.dropped} were left out for missing values" if rows.dropped else ""
     yield f"The data have {rows.given} rows, of which {rows.used} are used{left_out}."
 

@@ -15,6 +15,7 @@ from bayesmed.study.informed import Informed, informed
 from bayesmed.study.moderators import Moderator
 from bayesmed.study.observe import Observed
 from bayesmed.study.overlap import LARGE_DIFFERENCE, SMALL_ARM, Arms, Overlap, arms_of, overlap_of
+from bayesmed.study.published import Published
 from bayesmed.study.rank import Deficiency, rank_deficiencies
 from bayesmed.study.spread import Spread, residual_spread
 
@@ -32,7 +33,8 @@ class Audit:
     moderators : tuple of Moderator
     informed : Informed
         Whether the data inform the residual correlation, by which terms, how strongly.
-    arms : Arms
+    arms : Arms or None
+        None, as `overlap` and `spread` are empty, where there are only published figures.
     overlap : tuple of Overlap
     spread : tuple of Spread
     deficiencies : dict of str to tuple of Deficiency
@@ -43,7 +45,7 @@ class Audit:
     findings: tuple[Finding, ...]
     moderators: tuple[Moderator, ...]
     informed: Informed
-    arms: Arms
+    arms: Arms | None
     overlap: tuple[Overlap, ...]
     spread: tuple[Spread, ...]
     deficiencies: dict[str, tuple[Deficiency, ...]]
@@ -92,6 +94,14 @@ def audit(observed: Observed) -> Audit:
         "outcome": rank_deficiencies(observed.outcome_design, observed.outcome_terms),
     }
     known = informed(observed)
+    if observed.published is not None:
+        findings = (
+            *_published(observed.published),
+            *_moderators(observed),
+            *_informed(observed, known),
+            *rank_findings(observed, deficiencies),
+        )
+        return Audit(findings, observed.moderators, known, None, (), (), deficiencies, ())
     arms, overlap, spread = arms_of(observed), overlap_of(observed), residual_spread(observed)
     findings = (
         *_rows(observed),
@@ -115,6 +125,25 @@ def audit(observed: Observed) -> Audit:
         deficiencies,
         observed.identifiers,
     )
+
+
+def _published(published: Published) -> Iterator[Finding]:
+    yield Finding(
+        "attention",
+        "rows",
+        f"none: the study is known by published figures (n = {published.moments.rows}). Missing values, outliers, "
+        "the arms' overlap, the spread of residuals, linearity in the mediator and dependence of rows were not checked",
+    )
+    yield Finding("note", "figures", "rounded as printed; study.rounding(…) carries that to an answer")
+    for note in published.notes:
+        yield Finding("note", "figures", note)
+    if published.unprinted:
+        yield Finding(
+            "note",
+            "figures",
+            f"of {len(published.unprinted)} covariate(s) only the number is known: they cost degrees of freedom and "
+            "cannot serve as yardsticks",
+        )
 
 
 def _rows(observed: Observed) -> Iterator[Finding]:

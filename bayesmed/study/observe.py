@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 import pandas as pd
@@ -18,6 +18,9 @@ from bayesmed.study.formulas import Formulas, read
 from bayesmed.study.frame import Complete, RowsUsed, complete, given
 from bayesmed.study.identifiers import Identifier, identifiers
 from bayesmed.study.moderators import Moderator, default_moderators, moderators_found
+
+if TYPE_CHECKING:
+    from bayesmed.study.published import Published
 
 
 @dataclass(frozen=True, eq=False)
@@ -57,6 +60,8 @@ class Observed:
         The two formulas in checked pieces.
     mediator_equation, outcome_equation : Design
         The two right sides, to be evaluated on changed rows.
+    published : Published or None
+        The figures of a study without its rows, whose moments the rows here have.
     """
 
     frame: pd.DataFrame
@@ -81,6 +86,14 @@ class Observed:
     formulas: Formulas = field(repr=False)
     mediator_equation: Design = field(repr=False)
     outcome_equation: Design = field(repr=False)
+    published: Published | None = field(default=None, repr=False)
+
+    def span(self, name: str) -> tuple[float, float]:
+        """Return the range of a numeric column, or two SDs about its mean where there are only published figures."""
+        column = self.frame[name]
+        if self.published is None:
+            return float(column.min()), float(column.max())
+        return float(column.mean() - 2 * column.std()), float(column.mean() + 2 * column.std())
 
     @property
     def covariates(self) -> tuple[str, ...]:

@@ -66,7 +66,8 @@ def points(observed: Observed, at: Mapping[str, Any] | None = None) -> Points:
     at : dict, optional
         A list makes a dimension, a single value a scalar coordinate; several keys make a product grid. ``{}``
         averages over all rows. None takes, for each default moderator, every level or the observed values
-        nearest the 20th, 50th and 80th percentiles.
+        nearest the 20th, 50th and 80th percentiles; of a study known by published figures, the mean and one SD to
+        either side.
 
     Raises
     ------
@@ -115,6 +116,10 @@ def _default_values(observed: Observed, name: str) -> tuple[Any, ...]:
     categorical = kind_of(column, coded=name in coded_columns(observed.formulas)) == "categorical"
     if categorical or len(levels) <= FEW_VALUES:
         return levels
+    if observed.published is not None:
+        # Only mean and SD are known; a moderator's usual values are then these. Common practice, no source.
+        middle, spread = float(column.mean()), float(column.std())
+        return middle - spread, middle, middle + spread
     values = np.asarray(column)
     wanted = np.percentile(values, DEFAULT_PERCENTILES)
     nearest = [values[np.abs(values - percentile).argmin()].item() for percentile in wanted]
@@ -196,6 +201,8 @@ def _levels(column: pd.Series[Any]) -> tuple[Any, ...]:
 
 
 def _warn_outside(observed: Observed, dims: Mapping[str, tuple[Any, ...]], scalars: Mapping[str, Any]) -> None:
+    if observed.published is not None:
+        return
     for name, values in {**dims, **{n: (v,) for n, v in scalars.items()}}.items():
         column = observed.frame[name]
         if isinstance(column.dtype, pd.CategoricalDtype) or column.dtype == bool:
