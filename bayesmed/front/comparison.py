@@ -46,7 +46,7 @@ class Comparison:
 
     @property
     def rho(self) -> pd.DataFrame:
-        """Mean and SD of rho under each belief, before the data (prior_…) and after them (posterior_…).
+        """Mean and SD of rho under each belief, before the data (``prior_…``) and after them (``posterior_…``).
 
         Where the data are silent on rho the two are the same, exactly.
         """
