@@ -32,6 +32,7 @@ nb_execution_raise_on_error = True
 nb_execution_timeout = 300
 nb_execution_show_tb = True
 nb_merge_streams = True
+nb_output_stderr = "error"
 
 autodoc_typehints = "none"
 autodoc_member_order = "bysource"
