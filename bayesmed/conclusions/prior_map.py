@@ -97,7 +97,7 @@ def contour(mapped: xr.DataArray, level: float | None = None) -> pd.DataFrame:
     Parameters
     ----------
     mapped : xarray.DataArray
-        Of :func:`prior_map`.
+        Of ``Fit.prior_map``.
     level : float, optional
         Between 0 and 1; what the claim requires if left out.
 
@@ -107,6 +107,12 @@ def contour(mapped: xr.DataArray, level: float | None = None) -> pd.DataFrame:
         A row per crossing: the moderators, mean, sd, and turn, "falls" where the probability falls below the level
         as the SD grows and "rises" where it reaches it. Between two SDs of the map the probability is taken as
         straight. No row for a mean at which the level is not crossed.
+
+    Examples
+    --------
+    >>> plane = xr.DataArray([[0.99, 0.91]], {"mean": [0.1], "sd": [0.1, 0.2]}, attrs={"required": 0.95})
+    >>> contour(plane).round(3).to_dict("records")
+    [{'mean': 0.1, 'sd': 0.15, 'turn': 'falls'}]
     """
     if not isinstance(mapped, xr.DataArray) or not {"mean", "sd"} <= set(mapped.dims):
         raise ArgumentError("contour: mapped must be what fit.prior_map returned, with dims mean and sd")

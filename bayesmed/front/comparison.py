@@ -11,7 +11,22 @@ from bayesmed.front.shown import as_html, as_text
 
 
 class Comparison:
-    """Beliefs compared on the same draws, with verdicts on a claim; made by ``Fit.compare``."""
+    """Beliefs compared on the same draws, with verdicts on a claim; made by ``Fit.compare``.
+
+    Examples
+    --------
+    >>> import bayesmed as bm
+    >>> study = bm.Study(
+    ...     bm.load_example("knee_rehab"),
+    ...     exposure="coaching",
+    ...     mediator="exercise ~ coaching + confidence",
+    ...     outcome="function ~ exercise + coaching + confidence",
+    ... )
+    >>> fit = study.fit(method="exact", draws=250, random_seed=1, progressbar=False)
+    >>> comparison = fit.compare({"none left out": 0.0, "any to 0.9": bm.Uniform(-0.9, 0.9)})
+    >>> comparison.table.query("effect == 'indirect'")["verdict"].to_list()
+    ['holds', 'fails']
+    """
 
     def __init__(self, result: ComparisonResult) -> None:
         self._result = result
@@ -31,7 +46,7 @@ class Comparison:
 
     @property
     def rho(self) -> pd.DataFrame:
-        """Mean and SD of rho under each belief, before the data (prior_…) and after them (posterior_…).
+        """Mean and SD of rho under each belief, before the data (``prior_…``) and after them (``posterior_…``).
 
         Where the data are silent on rho the two are the same, exactly.
         """

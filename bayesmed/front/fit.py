@@ -46,6 +46,21 @@ class Fit:
         The belief to conclude under; None is the fit's own.
     claim : Claim, optional
         ``Claim("indirect", above=0)`` if left out.
+
+    Examples
+    --------
+    >>> import bayesmed as bm
+    >>> study = bm.Study(
+    ...     bm.load_example("knee_rehab"),
+    ...     exposure="coaching",
+    ...     mediator="exercise ~ coaching + confidence",
+    ...     outcome="function ~ exercise + coaching + confidence",
+    ... )
+    >>> fit = study.fit(method="exact", draws=250, random_seed=1, progressbar=False)
+    >>> fit.summary(rho=bm.LKJ(2))["effect"].to_list()
+    ['indirect', 'direct', 'total']
+    >>> fit.under(bm.LKJ(2)).rho
+    LKJ(eta=2.0)
     """
 
     def __init__(self, result: FitResult) -> None:
@@ -316,7 +331,23 @@ class Fit:
 
 
 def load(path: str | Path) -> Fit:
-    """Return a fit that ``Fit.save`` wrote."""
+    """Return a fit that ``Fit.save`` wrote.
+
+    Examples
+    --------
+    >>> import tempfile
+    >>> import bayesmed as bm
+    >>> study = bm.Study(
+    ...     {"x": [0, 0, 1, 1, 0, 1], "m": [1, 2, 3, 3, 2, 4], "y": [2, 1, 4, 5, 2, 4]},
+    ...     exposure="x",
+    ...     mediator="m ~ x",
+    ...     outcome="y ~ m + x",
+    ... )
+    >>> with tempfile.TemporaryDirectory() as folder:
+    ...     path = study.fit(method="exact", draws=10, random_seed=1, progressbar=False).save(f"{folder}/fit.nc")
+    ...     bm.load(path).how
+    'exact: 4 × 10 draws, independent, under the reference prior (seed 1)'
+    """
     from bayesmed.fit import store
 
     return Fit(store.load(path))

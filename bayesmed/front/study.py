@@ -43,6 +43,22 @@ class Study:
     Assumed, and not testable here: the exposure is free of unmeasured causes of mediator and outcome given the
     covariates; moderators and covariates precede the exposure; no cause of both mediator and outcome is itself
     an effect of the exposure; rows are independent.
+
+    Examples
+    --------
+    >>> import bayesmed as bm
+    >>> study = bm.Study(
+    ...     bm.load_example("knee_rehab"),
+    ...     exposure="coaching",
+    ...     mediator="exercise ~ coaching + confidence",
+    ...     outcome="function ~ exercise + coaching + confidence",
+    ... )
+    >>> study
+    Study of coaching (0 → 1) through exercise on function
+      mediator equation  exercise ~ coaching + confidence
+      outcome equation   function ~ exercise + coaching + confidence
+      moderators         none
+      rows               232 used of 240
     """
 
     def __init__(

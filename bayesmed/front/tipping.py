@@ -13,7 +13,24 @@ from bayesmed.front.shown import as_html, as_text
 
 
 class Tipping:
-    """The tipping distribution of a claim; made by ``Fit.tipping``."""
+    """The tipping distribution of a claim; made by ``Fit.tipping``.
+
+    Examples
+    --------
+    >>> import bayesmed as bm
+    >>> study = bm.Study(
+    ...     bm.load_example("knee_rehab"),
+    ...     exposure="coaching",
+    ...     mediator="exercise ~ coaching + confidence",
+    ...     outcome="function ~ exercise + coaching + confidence",
+    ... )
+    >>> fit = study.fit(method="exact", draws=250, random_seed=1, progressbar=False)
+    >>> tipping = fit.tipping()
+    >>> tipping.draws.dims
+    ('chain', 'draw')
+    >>> bool(tipping.table["median"].item() > 0)
+    True
+    """
 
     def __init__(self, result: TippingResult) -> None:
         self._result = result

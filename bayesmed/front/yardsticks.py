@@ -12,7 +12,21 @@ HEADING = (
 
 
 class Yardsticks:
-    """Unmeasured causes compared with measured covariates; made by ``Fit.yardsticks``."""
+    """Unmeasured causes compared with measured covariates; made by ``Fit.yardsticks``.
+
+    Examples
+    --------
+    >>> import bayesmed as bm
+    >>> study = bm.Study(
+    ...     bm.load_example("knee_rehab"),
+    ...     exposure="coaching",
+    ...     mediator="exercise ~ coaching + confidence",
+    ...     outcome="function ~ exercise + coaching + confidence",
+    ... )
+    >>> fit = study.fit(method="exact", draws=250, random_seed=1, progressbar=False)
+    >>> fit.yardsticks(strength=[1, 2]).table["covariate"].to_list()
+    ['confidence', 'confidence']
+    """
 
     def __init__(self, result: YardsticksResult) -> None:
         self._result = result

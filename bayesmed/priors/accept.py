@@ -29,6 +29,11 @@ def coerce(value: Any) -> Prior:
     PriorError
         For anything else, for a number that is not strictly between −1 and 1, and for a distribution that
         reaches beyond ±1.
+
+    Examples
+    --------
+    >>> coerce(0.2)
+    PointMass(value=0.2)
     """
     if isinstance(value, Prior):
         return value

@@ -101,6 +101,12 @@ class Wrapped(_ByItsFunctions):
 
     In a PyMC model its own `to_pymc(name)` or `create_variable(name)` is used if that works. Values
     of this type are compared by identity, and cannot be written in a file.
+
+    Examples
+    --------
+    >>> from scipy.stats import uniform
+    >>> Wrapped(uniform(-0.2, 0.4)).cdf(0.1).round(3)
+    np.float64(0.75)
     """
 
     distribution: Any

@@ -86,5 +86,11 @@ class ByGroup:
 
 
 def as_belief(value: Any) -> Any:
-    """Return a ByGroup as it is, and anything else as `coerce` takes it."""
+    """Return a ByGroup as it is, and anything else as `coerce` takes it.
+
+    Examples
+    --------
+    >>> as_belief(0.2)
+    PointMass(value=0.2)
+    """
     return value if isinstance(value, ByGroup) else coerce(value)

@@ -27,6 +27,14 @@ def inflation_probability(prior: Prior, fit: HasDirection) -> float:
 
     It does where ρ has the sign of the exposure's effect on the mediator, so this is the mean over posterior
     draws of P(ρ > 0) where that effect is positive and of P(ρ < 0) where it is negative.
+
+    Examples
+    --------
+    >>> from types import SimpleNamespace
+    >>> from bayesmed.priors import Uniform
+    >>> draws = SimpleNamespace(direction=lambda: [1, 1, 1, -1])
+    >>> inflation_probability(Uniform(-0.1, 0.3), draws)
+    0.625
     """
     direction = np.asarray(fit.direction(), dtype=float)
     if direction.size == 0 or np.isnan(direction).any():

@@ -54,7 +54,7 @@ def from_quantiles(
 
     See Also
     --------
-    quantile_gaps : what a prior has where something else was stated.
+    bayesmed.priors.quantile_gaps : what a prior has where something else was stated.
 
     Examples
     --------
@@ -85,7 +85,13 @@ def from_quantiles(
 
 
 def quantile_gaps(prior: Prior, quantiles: Mapping[float, float]) -> dict[float, tuple[float, float]]:
-    """Return for each probability the value stated and the quantile that `prior` has."""
+    """Return for each probability the value stated and the quantile that `prior` has.
+
+    Examples
+    --------
+    >>> quantile_gaps(Uniform(0, 0.5), {0.5: 0.2})
+    {0.5: (0.2, 0.25)}
+    """
     return {float(level): (float(stated), float(prior.ppf(level))) for level, stated in quantiles.items()}
 
 

@@ -30,6 +30,14 @@ class FromMaker(Prior):
     "density", within 1e-6 where the density is smooth). If it is a function of others, such as a
     deterministic with hyperparameters, the cdf is the smoothed one of 20,000 draws from seed 0 (`basis` is
     "draws"; see `from_draws`). Compared by identity.
+
+    Examples
+    --------
+    >>> import pymc as pm
+    >>> from types import SimpleNamespace
+    >>> made = FromMaker(SimpleNamespace(to_pymc=lambda name: pm.Uniform(name, -0.2, 0.2)))
+    >>> made.basis, made.cdf(0.1).round(3)
+    ('density', np.float64(0.75))
     """
 
     maker: Any

@@ -69,6 +69,11 @@ def from_spec(spec: Mapping[str, Any] | float, place: str = "belief") -> Prior:
     ------
     StudyFileError
         If the family or a key is unknown, a key is missing, or a value is not allowed; it names the place.
+
+    Examples
+    --------
+    >>> from_spec({"family": "LKJ", "eta": 2})
+    LKJ(eta=2.0)
     """
     spec = plain(spec)
     if isinstance(spec, int | float) and not isinstance(spec, bool):
@@ -79,7 +84,13 @@ def from_spec(spec: Mapping[str, Any] | float, place: str = "belief") -> Prior:
 
 
 def coefficient_from_spec(spec: Mapping[str, Any], place: str = "coefficient") -> CoefficientPrior:
-    """Return the prior of a coefficient or a scale that a plain table describes; errors as in `from_spec`."""
+    """Return the prior of a coefficient or a scale that a plain table describes; errors as in `from_spec`.
+
+    Examples
+    --------
+    >>> coefficient_from_spec({"family": "Normal", "mean": 0, "sd": 1})
+    Normal(mean=0.0, sd=1.0)
+    """
     prior: CoefficientPrior = _from_table(
         spec, place, COEFFICIENTS, 'a table such as {family = "Normal", mean = 0, sd = 1}'
     )
@@ -87,7 +98,13 @@ def coefficient_from_spec(spec: Mapping[str, Any], place: str = "coefficient") -
 
 
 def to_spec(prior: Prior | CoefficientPrior) -> dict[str, Any]:
-    """Return the plain table from which `from_spec` or `coefficient_from_spec` builds `prior` again."""
+    """Return the plain table from which `from_spec` or `coefficient_from_spec` builds `prior` again.
+
+    Examples
+    --------
+    >>> to_spec(LKJ(2))
+    {'family': 'LKJ', 'eta': 2.0}
+    """
     family = type(prior).__name__
     if type(prior) not in (BELIEFS | COEFFICIENTS).values():
         raise PriorError(

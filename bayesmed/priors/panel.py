@@ -30,6 +30,11 @@ def panel() -> dict[str, Prior]:
     - ``"wide"``, ``LKJ(2)``: doubt about size and sign, with correlations near ±1 the least likely.
     - ``"anything to ±0.9"``, ``Uniform(-0.9, 0.9)``: every ρ in the range over which it is commonly swept
       (common practice, no source) equally likely.
+
+    Examples
+    --------
+    >>> panel()["wide"]
+    LKJ(eta=2.0)
     """
     return {
         "nothing left out": PointMass(0.0),

@@ -28,6 +28,12 @@ class Prior(ABC):
     functions take arrays of any shape and return arrays of that shape. A family supplies `support`,
     `odds_moments`, `rho_mean`, `rho_sd` and, for points strictly inside its support, `_logpdf`, `_cdf` and
     `_ppf`.
+
+    Examples
+    --------
+    >>> from bayesmed.priors import LKJ
+    >>> isinstance(LKJ(2), Prior)
+    True
     """
 
     # ------------------------------------------------------------------ facts
@@ -140,7 +146,7 @@ class Prior(ABC):
         """Return in one sentence what the prior says.
 
         It gives the central 90 % of ρ; how strong one unmeasured cause would have to be for its ends, as the
-        equal shares R²_M = R²_Y = |ρ| of the residual variances; and whether an effect has a mean and an SD
+        equal shares R²_M = R²_Y, the size of ρ, of the residual variances; and whether an effect has a mean and an SD
         under it.
 
         Parameters

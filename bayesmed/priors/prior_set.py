@@ -18,6 +18,12 @@ class PriorSet(ABC):
 
     A set is a frozen value. It answers with members of itself: the one under which a claim is least probable, and
     the one under which it is most probable.
+
+    Examples
+    --------
+    >>> from bayesmed.priors import AnyOn
+    >>> isinstance(AnyOn(-0.2, 0.2), PriorSet)
+    True
     """
 
     @abstractmethod

@@ -11,7 +11,14 @@ __all__ = ["HasDirection", "HasYardsticks"]
 
 
 class HasDirection(Protocol):
-    """Posterior draws that know which way the exposure moves the mediator."""
+    """Posterior draws that know which way the exposure moves the mediator.
+
+    Examples
+    --------
+    >>> from bayesmed.front.fit import Fit
+    >>> hasattr(Fit, "direction")
+    True
+    """
 
     def direction(self) -> ArrayLike:
         """Return, one to a posterior draw, numbers with the sign of the exposure's effect on the mediator."""

@@ -33,6 +33,12 @@ class Reweighted(Prior):
         probabilities add up to 1.
     at : array, shape (step,)
         Factors at the places themselves, which only matter if the base has an atom there.
+
+    Examples
+    --------
+    >>> from bayesmed.priors import Uniform
+    >>> Reweighted(Uniform(-0.5, 0.5), np.array([0.0]), np.array([0.5, 1.5]), np.array([1.0])).cdf(0.0)
+    np.float64(0.25)
     """
 
     base: Prior

@@ -24,7 +24,7 @@ TINY = float(np.finfo(float).tiny)
 
 @dataclass(frozen=True)
 class SharedCause(Prior):
-    """One common cause that explains shares of both residual variances: |ρ| = √(R²_M · R²_Y).
+    """One common cause that explains shares of both residual variances: the size of ρ is √(R²_M · R²_Y).
 
     Parameters
     ----------
@@ -38,7 +38,7 @@ class SharedCause(Prior):
     Notes
     -----
     The shares are of what the exposure, moderators and covariates leave over, not of total variances. With
-    several causes √(R²_M · R²_Y) is an upper bound of |ρ|. With both shares uncertain, an effect has a mean
+    several causes √(R²_M · R²_Y) bounds the size of ρ. With both shares uncertain, an effect has a mean
     if the two `beta` shapes add up to more than ½ and an SD if to more than 1; otherwise it has both. The cdf
     is within 1e-8.
 

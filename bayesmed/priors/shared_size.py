@@ -24,7 +24,13 @@ BLOCK = 64
 
 @dataclass(frozen=True)
 class BetaShare:
-    """An uncertain share of variance, Beta(`alpha`, `beta`), of mean alpha/(alpha + beta)."""
+    """An uncertain share of variance, Beta(`alpha`, `beta`), of mean alpha/(alpha + beta).
+
+    Examples
+    --------
+    >>> BetaShare(2, 10)
+    BetaShare(alpha=2.0, beta=10.0)
+    """
 
     alpha: float
     beta: float
