@@ -178,7 +178,7 @@ def _lower_probability(constant: Array, slope: Array, belief: Belief) -> Callabl
 def _table(belief: Belief) -> Callable[[Array], Array]:
     """Return P(r < x) of a belief without atoms, interpolated between many places.
 
-    Places are equally far apart in the arc tangent of r, the arc sine of rho, where densities infinite at ±1 are finite,
+    Places are equally far apart in the arc tangent of r, the arc sine of rho, where densities infinite at ±1 are not,
     and lie between the ends of the support, where distribution functions may have kinks. A smooth one is off by under
     1e-9 between neighbours.
     """

@@ -16,6 +16,7 @@ from bayesmed.fit.movable import MovableBelief, belief_data, movable
 from bayesmed.fit.record import describe
 from bayesmed.fit.result import FitResult, Settings, with_structural
 from bayesmed.fit.sample import compile_model, sample_exact, sample_nuts
+from bayesmed.fit.shared import sample_shared, shares_a_model
 from bayesmed.fit.statistics import Statistics, reduce_study
 from bayesmed.priors.by_group import ByGroup
 from bayesmed.priors.coefficient_set import Coefficients
@@ -72,8 +73,14 @@ def fit_study(
         return result if rho is None else result.with_belief(rho)
     if informed:
         return _joint(base, rho, progressbar)
-    model = build_model(statistics, observed.mediator_terms, observed.outcome_terms, rho, chosen)
-    return _finished(base.replaced(tree=sample_nuts(compile_model(model), settings, progressbar)))
+    # The likelihood is silent on rho: a belief about it needs no sampler.
+    terms = observed.mediator_terms, observed.outcome_terms
+    if shares_a_model(chosen):
+        tree = sample_shared(statistics, *terms, settings, progressbar)
+    else:
+        tree = sample_nuts(compile_model(build_model(statistics, *terms, None, chosen)), settings, progressbar)
+    result = _finished(base.replaced(tree=tree, belief=None))
+    return result if rho is None else result.with_belief(rho)
 
 
 def refit(result: FitResult, belief: Any, progressbar: bool = False) -> FitResult:
@@ -143,7 +150,7 @@ def _grouped(
     def sample(part: Statistics, m_terms: tuple[str, ...], y_terms: tuple[str, ...], own: Settings) -> xr.DataTree:
         if own.method == "exact":
             return sample_exact(m_terms, y_terms, part, own)
-        return sample_nuts(compile_model(build_model(part, m_terms, y_terms, None, coefficients)), own, progressbar)
+        return sample_shared(part, m_terms, y_terms, own, progressbar)
 
     result = fit_groups(observed, statistics, belief, settings, sample)
     for part in result.parts.values():

@@ -33,7 +33,7 @@ def sample_nuts(compiled: Any, settings: Settings, progressbar: bool) -> xr.Data
     posterior = tree["posterior"].to_dataset()
     if "rho" in posterior and posterior["rho"].dims != ("chain", "draw"):
         raise FitError("rho was not sampled as one number per draw; a prior's to_pymc must return a scalar variable")
-    if posterior.sizes["draw"] != settings.draws or bool(posterior["tau"].isnull().any()):
+    if posterior.sizes["draw"] != settings.draws or any(bool(v.isnull().any()) for v in posterior.values()):
         # An interrupted sampler hands over what it has as if nothing had happened.
         raise KeyboardInterrupt
     # What rho was made of is no parameter of the study.

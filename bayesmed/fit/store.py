@@ -102,7 +102,11 @@ def load(path: str | Path) -> FitResult:
         )
         result.tree.attrs.update(attributes)
         return result
-    return FitResult(observed, reduce_study(observed), tree, belief, joint, coefficients, settings)
+    loaded = FitResult(observed, reduce_study(observed), tree, belief, joint, coefficients, settings)
+    if belief is None or joint or settings.method == "adopted":
+        return loaded
+    # The numbers that stand for rho come of the seed, so that they are the same to the last bit.
+    return loaded.replaced(belief=None).with_belief(belief)
 
 
 def _encoded(frame: pd.DataFrame) -> tuple[xr.Dataset, list[dict[str, Any]]]:
