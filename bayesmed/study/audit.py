@@ -88,8 +88,8 @@ def audit(observed: Observed) -> Audit:
     observed : Observed
     """
     deficiencies = {
-        "mediator": rank_deficiencies(observed.mediator_design, observed.mediator_terms),
-        "outcome": rank_deficiencies(observed.outcome_design, observed.outcome_terms),
+        "mediator": rank_deficiencies(observed.compressed.mediator_design, observed.mediator_terms),
+        "outcome": rank_deficiencies(observed.compressed.outcome_design, observed.outcome_terms),
     }
     known = informed(observed)
     arms, overlap, spread = arms_of(observed), overlap_of(observed), residual_spread(observed)

@@ -126,9 +126,10 @@ def informed(observed: Observed) -> Informed:
     terms = tuple(observed.mediator_terms[j] for j in informing)
     if not terms and not functional_form:
         return Informed((), False, 0, None, None, math.inf)
-    v, w, m = observed.mediator_design, observed.outcome_design, observed.mediator
+    compressed = observed.compressed
+    v, w, m = compressed.mediator_design, compressed.outcome_design, compressed.mediator
     residual = _split(v, m)[1]
-    df = len(m) - _rank(v)
+    df = observed.rows.used - _rank(v)
     sigma_m = math.sqrt(residual @ residual / df)
     beyond = _split(w, residual)[1]
     error = sigma_m / float(np.linalg.norm(beyond))

@@ -2,17 +2,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
 import pandas as pd
 
+from bayesmed.core.contrasts import chunks
 from bayesmed.core.errors import ArgumentError, DataError, FormulaError
 from bayesmed.core.mapping import Alignment, Array, align
 from bayesmed.study.changed import repeated, with_values
-from bayesmed.study.designs import Design, design, left_values
+from bayesmed.study.compressed import Compressed, compress
+from bayesmed.study.designs import CHUNK, Design, design, left_values
 from bayesmed.study.exposure import contrast_of
 from bayesmed.study.formulas import Formulas, read
 from bayesmed.study.frame import Complete, RowsUsed, complete, given
@@ -38,10 +40,10 @@ class Observed:
         As given.
     mediator_terms, outcome_terms : tuple of str
         The columns of the two designs.
-    mediator_design : array, shape (row, mediator_term)
-    outcome_design : array, shape (row, outcome_term)
     mediator, outcome : array, shape (row,)
         The values of the expressions left of ``~``.
+    compressed : Compressed
+        Both designs and both sides, reduced to their inner products in one pass.
     alignment : Alignment
         Where the mediator and its terms stand in the outcome design.
     moderators : tuple of Moderator
@@ -68,10 +70,9 @@ class Observed:
     outcome_formula: str
     mediator_terms: tuple[str, ...]
     outcome_terms: tuple[str, ...]
-    mediator_design: Array = field(repr=False)
-    outcome_design: Array = field(repr=False)
     mediator: Array = field(repr=False)
     outcome: Array = field(repr=False)
+    compressed: Compressed = field(repr=False)
     alignment: Alignment = field(repr=False)
     moderators: tuple[Moderator, ...]
     default_moderators: tuple[str, ...]
@@ -87,6 +88,27 @@ class Observed:
         """Every column right of ``~`` but the exposure: those that `at` may name."""
         left = self.formulas.mediator.columns | self.formulas.outcome.columns
         return tuple(name for name in self.formulas.columns if name in left and name != self.exposure)
+
+    @property
+    def mediator_design(self) -> Array:
+        """The mediator design on all rows, shape (row, mediator_term), made anew at each call."""
+        parts = [self.mediator_equation.rows(self.frame.iloc[piece]) for piece in self._pieces()]
+        return _frozen(np.concatenate(parts))
+
+    @property
+    def outcome_design(self) -> Array:
+        """The outcome design on all rows, shape (row, outcome_term), made anew at each call."""
+        parts = [self.outcome_equation.rows(self.frame.iloc[p], self.mediator[p]) for p in self._pieces()]
+        return _frozen(np.concatenate(parts))
+
+    def designs(self) -> Iterator[tuple[Array, Array]]:
+        """Yield the two designs on a chunk of rows after the other."""
+        for piece in self._pieces():
+            frame = self.frame.iloc[piece]
+            yield self.mediator_equation.rows(frame), self.outcome_equation.rows(frame, self.mediator[piece])
+
+    def _pieces(self) -> Iterator[slice]:
+        return chunks(len(self.frame), CHUNK)
 
 
 def observe(
@@ -130,9 +152,10 @@ def observe(
     found = moderators_found(formulas, exposure, frame)
     pair = contrast_of(frame[exposure], contrast, was_text=exposure in used.text)
     sides = _sides(formulas, used)
-    m_design, m_values = design(formulas.mediator, "mediator", formulas.words, frame, None)
-    y_design, y_values = design(formulas.outcome, "outcome", formulas.words, frame, sides[0])
+    m_design, m_first = design(formulas.mediator, "mediator", formulas.words, frame, None)
+    y_design, y_first = design(formulas.outcome, "outcome", formulas.words, frame, sides[0])
     _check_contrast_rows(m_design, y_design, frame, exposure, pair, sides[0])
+    compressed = compress(m_design, y_design, frame, *sides, (m_first, y_first), formulas.mediator.left.label)
     return Observed(
         frame=frame,
         exposure=exposure,
@@ -143,11 +166,10 @@ def observe(
         outcome_formula=outcome,
         mediator_terms=m_design.labels,
         outcome_terms=y_design.labels,
-        mediator_design=_frozen(m_values),
-        outcome_design=_frozen(y_values),
         mediator=_frozen(sides[0]),
         outcome=_frozen(sides[1]),
-        alignment=align(m_values, y_values, sides[0]),
+        compressed=compressed,
+        alignment=align(compressed.mediator_design, compressed.outcome_design, compressed.mediator),
         moderators=found,
         default_moderators=default_moderators(found, moderators),
         rows=used.rows,
