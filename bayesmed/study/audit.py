@@ -118,6 +118,13 @@ def audit(observed: Observed) -> Audit:
 
 
 def _rows(observed: Observed) -> Iterator[Finding]:
+    if observed.batches is not None:
+        yield Finding(
+            "note",
+            "rows",
+            f"the data come in batches: arms, overlap, spread and values are judged on {len(observed.frame)} evenly "
+            "spaced rows, all else on every row; repeated identifiers are not looked for",
+        )
     rows = observed.rows
     if not rows.dropped:
         yield Finding("note", "rows", f"all {rows.given} rows are complete in every column used")

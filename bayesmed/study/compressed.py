@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from concurrent.futures import Executor
 from dataclasses import dataclass
 
 import numpy as np
@@ -11,6 +12,7 @@ import pandas as pd
 from bayesmed.core.contrasts import chunks
 from bayesmed.core.mapping import Array
 from bayesmed.core.row_summary import RowSummary, joined_summary, summarised
+from bayesmed.study.batches import mapped
 from bayesmed.study.designs import CHUNK, Design
 
 
@@ -86,6 +88,8 @@ def compress(
     outcome: Array,
     first: tuple[Array, Array],
     name: str,
+    batches: Iterator[tuple[pd.DataFrame, Array, Array]] | None = None,
+    executor: Executor | None = None,
 ) -> Compressed:
     """Return both designs and sides, compressed.
 
@@ -98,6 +102,10 @@ def compress(
         The two designs on the first chunk.
     name : str
         What the mediator is called among the outcome's terms.
+    batches : iterator of (frame, mediator, outcome), optional
+        All rows, where those given are only some of them.
+    executor : concurrent.futures.Executor, optional
+        Summarises batches side by side.
     """
     start, places, head = planned(mediator_equation, outcome_equation, mediator[:CHUNK], outcome[:CHUNK], first, name)
 
@@ -106,7 +114,8 @@ def compress(
         for piece in list(chunks(len(frame), CHUNK))[1:]:
             yield start.summary(frame.iloc[piece], mediator[piece], outcome[piece])
 
-    return Compressed(joined_summary(parts()), *places)
+    summaries = parts() if batches is None else mapped(start.summary, batches, executor)
+    return Compressed(joined_summary(summaries), *places)
 
 
 def planned(
