@@ -90,7 +90,7 @@ def batched(data: Any) -> Batches | None:
             "data: an iterator can be read once only, and the rows are read twice: first for levels and transforms, "
             "then for the statistics. Give a function that returns a new iterator, a list of frames or a Parquet path."
         )
-    if isinstance(data, list | tuple):
+    if isinstance(data, list | tuple) and data and (isinstance(data[0], Mapping) or hasattr(data[0], "columns")):
         return _from(lambda: data)
     if callable(data) and not hasattr(data, "columns"):
         return _from(data)
