@@ -174,7 +174,7 @@ def _split(design: Array, values: Array) -> tuple[Array, Array]:
     size = np.linalg.norm(design, axis=0)
     size[size == 0] = 1.0
     scaled = design / size
-    fitted = scaled @ np.linalg.lstsq(scaled, values, rcond=None)[0]
+    fitted = scaled @ np.linalg.lstsq(scaled, values, rcond=DEPENDENT)[0]
     return fitted, values - fitted
 
 
@@ -183,4 +183,4 @@ def _rank(design: Array) -> int:
         return 0
     size = np.linalg.norm(design, axis=0)
     size[size == 0] = 1.0
-    return int(np.linalg.matrix_rank(design / size))
+    return int(np.linalg.matrix_rank(design / size, rtol=DEPENDENT))

@@ -117,7 +117,7 @@ def residuals(design: Array, values: Array) -> Array:
 def _least_squares(design: Array, values: Array) -> Array:
     size = np.linalg.norm(design, axis=0)
     size[size == 0] = 1.0
-    return np.asarray(np.linalg.lstsq(design / size, values, rcond=None)[0] / size)
+    return np.asarray(np.linalg.lstsq(design / size, values, rcond=1e-13)[0] / size)
 
 
 def _along_number(equation: str, residual: Array, along: pd.Series[Any]) -> Spread | None:
