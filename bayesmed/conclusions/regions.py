@@ -161,7 +161,7 @@ class _Truth:
 def _levels(result: FitResult, moderator: str) -> list[Any] | None:
     """Return the levels of a moderator that is judged level by level, None for a continuous one."""
     observed = result.observed
-    column = observed.frame[moderator] if moderator in observed.covariates else None
+    column = observed.column(moderator) if moderator in observed.covariates else None
     if column is None:
         points(observed, {moderator: [0]})  # says which columns may be named
     assert column is not None
@@ -184,14 +184,14 @@ def _by_level(search: _Search, levels: list[Any], reading: str) -> list[tuple[An
             count += 1
         kept = sorted(order[:count])
     joint = truth.joint(kept)
-    column = search.result.observed.frame[search.moderator]
+    column = search.result.observed.column(search.moderator)
     shown = search.points(levels).dims[search.moderator]
     return [(shown[k], shown[k], np.nan, np.nan, float((column == levels[k]).mean()), *joint) for k in kept]
 
 
 def _by_range(search: _Search, reading: str) -> list[tuple[Any, ...]]:
     observed = search.result.observed
-    column = observed.frame[search.moderator].to_numpy(dtype=float)
+    column = observed.column(search.moderator).to_numpy(dtype=float)
     low, high = observed.span(search.moderator)
     rows = []
     for start, stop in _intervals(search, np.linspace(low, high, search.size)):

@@ -115,9 +115,10 @@ def block_strength(result: FitResult, names: Sequence[str]) -> Strength:
     w = _columns_of(observed.outcome_equation, names, "outcome")
     others = np.setdiff1d(np.arange(len(observed.mediator_terms)), v)
     return strength(
-        observed.mediator_design[:, v],
-        observed.outcome_design[:, w],
-        observed.mediator_design[:, others],
+        observed.compressed.mediator_design[:, v],
+        observed.compressed.outcome_design[:, w],
+        observed.compressed.mediator_design[:, others],
+        observed.rows.used,
         result.flat("alpha")[:, v],
         result.flat("gamma")[:, w],
         result.flat("sigma_m"),

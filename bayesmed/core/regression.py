@@ -4,6 +4,7 @@ With ``R`` the triangular factor of ``[D y]``, the residual sum of squares at an
 ``|R[:, -1] - R[:, :-1] theta|²``: a likelihood whose cost does not depend on the number of rows.
 """
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -11,6 +12,7 @@ import numpy as np
 from scipy.linalg import solve_triangular
 
 from bayesmed.core.mapping import Array
+from bayesmed.core.row_summary import RowSummary, summarised
 
 
 @dataclass(frozen=True, eq=False)
@@ -27,12 +29,15 @@ class Regression:
         Standard deviation of y, divisor n - 1.
     rows : int
         Number of rows n.
+    centred_solution : array, shape (term,), or None
+        Least-squares coefficients found on centred columns, where D holds a constant; they keep more digits.
     """
 
     factor: Array
     centred_factor: Array
     response_sd: float
     rows: int
+    centred_solution: Array | None = None
 
     @property
     def terms(self) -> int:
@@ -48,6 +53,8 @@ class Regression:
     def coefficients(self) -> Array:
         """Least-squares coefficients, shape (term,)."""
         p = self.terms
+        if self.centred_solution is not None:
+            return self.centred_solution
         return np.asarray(solve_triangular(self.factor[:p, :p], self.factor[:p, p]))
 
     @property
@@ -76,11 +83,50 @@ def reduce_rows(design: Array, response: Array) -> Regression:
     design : array, shape (row, term)
     response : array, shape (row,)
     """
-    rows, terms = design.shape
-    stacked = np.column_stack([design, response])
-    factor = _triangle(stacked, terms + 1)
-    centred = _triangle(design - design.mean(axis=0), terms)
-    return Regression(factor, centred, float(np.std(response, ddof=1)), rows)
+    summary = summarised(np.column_stack([design, response]))
+    terms = design.shape[1]
+    return regression_from(summary, range(terms), terms)
+
+
+def regression_from(summary: RowSummary, terms: Sequence[int], response: int) -> Regression:
+    """Return the regression of one column of summarised rows on others.
+
+    Parameters
+    ----------
+    summary : RowSummary
+    terms : sequence of int
+        The design's columns.
+    response : int
+        The response's column.
+    """
+    chosen = list(terms)
+    factor = _triangle(summary.columns([*chosen, response]), len(chosen) + 1)
+    centred = summary.centred(chosen)
+    own = summary.centred([response])[:, 0]
+    sd = float(np.linalg.norm(own) / np.sqrt(max(summary.rows - 1, 1)))
+    solution = _centred_solution(summary, chosen, response)
+    return Regression(factor, _triangle(centred, len(chosen)), sd, summary.rows, solution)
+
+
+def _centred_solution(summary: RowSummary, chosen: list[int], response: int) -> Array | None:
+    """Return the coefficients found on centred, scaled columns, if one column is constant and the others are not."""
+    means, centred = summary.means(chosen), summary.centred(chosen)
+    size = np.linalg.norm(centred, axis=0)
+    constant = np.flatnonzero(size <= 1e-14 * np.abs(means) * np.sqrt(summary.rows))
+    if len(constant) != 1 or summary.rows <= len(chosen):
+        return None
+    others = np.setdiff1d(np.arange(len(chosen)), constant)
+    triangle = np.linalg.qr(
+        np.column_stack([centred[:, others] / size[others], summary.centred([response])[:, 0]]), mode="r"
+    )
+    p = len(others)
+    if p and np.abs(np.diag(triangle)[:p]).min() == 0:
+        return None
+    solution = np.zeros(len(chosen))
+    solution[others] = solve_triangular(triangle[:p, :p], triangle[:p, p]) / size[others] if p else 0.0
+    level = summary.means([response])[0] - means[others] @ solution[others]
+    solution[constant] = level / means[constant]
+    return solution
 
 
 def _triangle(matrix: Array, size: int) -> Array:

@@ -48,6 +48,7 @@ def strength(
     in_mediator: Array,
     in_outcome: Array,
     others: Array,
+    rows: int,
     alpha: Array,
     gamma: Array,
     sigma_m: Array,
@@ -57,19 +58,21 @@ def strength(
 
     Parameters
     ----------
-    in_mediator : array, shape (row, a)
-        The block's columns in the mediator design; there may be none.
-    in_outcome : array, shape (row, b)
-        Its columns in the outcome design.
-    others : array, shape (row, c)
-        The other columns of the mediator design.
+    in_mediator : array, shape (any, a)
+        Columns with the inner products of the block's in the mediator design; there may be none.
+    in_outcome : array, shape (any, b)
+        The same of its columns in the outcome design.
+    others : array, shape (any, c)
+        The same of the other columns of the mediator design.
+    rows : int
+        Number of rows.
     alpha : array, shape (draw, a)
     gamma : array, shape (draw, b)
     sigma_m, tau : array, shape (draw,)
     """
     both = np.column_stack([in_mediator, in_outcome])
     freed = both - others @ np.linalg.lstsq(others, both, rcond=None)[0]
-    covariance = freed.T @ freed / len(freed)
+    covariance = freed.T @ freed / rows
     a = in_mediator.shape[1]
 
     def form(left: Array, matrix: Array, right: Array) -> Array:

@@ -6,7 +6,7 @@ import numpy as np
 
 from bayesmed.core.errors import DesignError
 from bayesmed.core.mapping import INFORMING_RESIDUAL, Alignment, Array
-from bayesmed.core.regression import Regression, reduce_rows
+from bayesmed.core.regression import Regression, regression_from
 from bayesmed.study.observe import Observed
 from bayesmed.study.rank import rank_deficiencies
 
@@ -55,20 +55,21 @@ def reduce_study(observed: Observed) -> Statistics:
     DesignError
         If a design is rank deficient, a fit is perfect, or fewer than three degrees of freedom remain.
     """
+    compressed = observed.compressed
     pairs = (
-        ("mediator", observed.mediator_design, observed.mediator_terms, observed.mediator),
-        ("outcome", observed.outcome_design, observed.outcome_terms, observed.outcome),
+        ("mediator", compressed.mediator_terms, observed.mediator_terms, compressed.sides[0]),
+        ("outcome", compressed.outcome_terms, observed.outcome_terms, compressed.sides[1]),
     )
     regressions = []
-    for name, design, terms, response in pairs:
-        deficient = rank_deficiencies(design, terms)
+    for name, columns, terms, response in pairs:
+        deficient = rank_deficiencies(compressed.summary.columns(columns), terms)
         if deficient:
             raise DesignError(
                 f"the {name} equation is rank deficient: "
                 + "; ".join(str(d) for d in deficient)
                 + ". Remove one of these terms."
             )
-        regression = reduce_rows(design, response)
+        regression = regression_from(compressed.summary, columns, response)
         if regression.degrees_of_freedom < 3:
             raise DesignError(
                 f"the {name} equation has {regression.terms} coefficients for {regression.rows} complete rows; "
@@ -89,14 +90,20 @@ def _with_residuals(observed: Observed, mediator: Regression, outcome: Regressio
     functional = alignment.mediator_residual > INFORMING_RESIDUAL
     if not informing and not functional:
         return Statistics(mediator, outcome, outcome, (), False, alignment)
-    w, v = observed.outcome_design, observed.mediator_design
+    # Columns of the summary, as weights: those of W, then M - W u, then V - W L of the informing terms, then Y.
+    own = np.eye(len(observed.compressed.summary.shift))
+    w = own[:, list(observed.compressed.outcome_terms)]
+    m, y = own[:, observed.compressed.sides[0]], own[:, observed.compressed.sides[1]]
     columns = [w]
     if functional:
-        columns.append((observed.mediator - w @ alignment.mediator)[:, None])
+        columns.append((m - w @ alignment.mediator)[:, None])
     if informing:
         chosen = list(informing)
-        columns.append(v[:, chosen] - w @ alignment.terms[:, chosen])
-    informed = reduce_rows(np.column_stack(columns), observed.outcome)
+        v = own[:, [observed.compressed.mediator_terms[k] for k in chosen]]
+        columns.append(v - w @ alignment.terms[:, chosen])
+    weights = np.column_stack([*columns, y])
+    terms = weights.shape[1] - 1
+    informed = regression_from(observed.compressed.summary.combined(weights), range(terms), terms)
     return Statistics(mediator, outcome, informed, informing, functional, alignment)
 
 

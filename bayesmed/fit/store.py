@@ -35,6 +35,8 @@ def save(result: FitResult, path: str | Path) -> Path:
     if not target.parent.is_dir():
         raise ArgumentError(f"save: folder {str(target.parent)!r} does not exist")
     observed = result.observed
+    if observed.batches is not None:
+        raise FitError("save: the rows of this study come in batches and are not stored; keep the draws of fit.tree")
     tree = result.tree.copy()
     kinds: list[dict[str, Any]] = []
     if observed.published is None:

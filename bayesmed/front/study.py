@@ -20,7 +20,8 @@ class Study:
     Parameters
     ----------
     data : pandas.DataFrame, or any frame or dict of columns that converts to one
-        One row per independent unit.
+        One row per independent unit. Or batches of rows, read twice and never held at once: the path of a Parquet
+        file, a list of frames, or a function that returns a new iterator of frames.
     exposure : str
         Column whose effect is asked.
     contrast : pair, optional
@@ -32,6 +33,8 @@ class Study:
         Formula of the outcome equation, ``"function ~ exercise * confidence + coaching + age"``.
     moderators : sequence of str, optional
         Which of the moderators found get a default grid of values; all of them if left out.
+    executor : concurrent.futures.Executor, optional
+        Summarises batches side by side; Dask's ``Client.get_executor()`` is one.
 
     Raises
     ------
@@ -70,6 +73,7 @@ class Study:
         outcome: str,
         contrast: Sequence[Any] | None = None,
         moderators: Sequence[str] | None = None,
+        executor: Any = None,
     ) -> None:
         self.observed: Observed = observe(
             data,
@@ -78,6 +82,7 @@ class Study:
             mediator=mediator,
             outcome=outcome,
             moderators=moderators,
+            executor=executor,
         )
 
     @classmethod

@@ -90,8 +90,8 @@ def audit(observed: Observed) -> Audit:
     observed : Observed
     """
     deficiencies = {
-        "mediator": rank_deficiencies(observed.mediator_design, observed.mediator_terms),
-        "outcome": rank_deficiencies(observed.outcome_design, observed.outcome_terms),
+        "mediator": rank_deficiencies(observed.compressed.mediator_design, observed.mediator_terms),
+        "outcome": rank_deficiencies(observed.compressed.outcome_design, observed.outcome_terms),
     }
     known = informed(observed)
     if observed.published is not None:
@@ -147,6 +147,13 @@ def _published(published: Published) -> Iterator[Finding]:
 
 
 def _rows(observed: Observed) -> Iterator[Finding]:
+    if observed.batches is not None:
+        yield Finding(
+            "note",
+            "rows",
+            f"the data come in batches: arms, overlap, spread and values are judged on {len(observed.frame)} evenly "
+            "spaced rows, all else on every row; repeated identifiers are not looked for",
+        )
     rows = observed.rows
     if not rows.dropped:
         yield Finding("note", "rows", f"all {rows.given} rows are complete in every column used")

@@ -61,8 +61,8 @@ def _curved(observed: Observed) -> Iterator[Finding]:
         f"the outcome formula is not linear in {observed.mediator_name}; effects are averaged over the "
         "mediator's error",
     )
-    residual = residuals(observed.mediator_design, observed.mediator)
-    reach = 6.5 * residual.std()
+    residual = residuals(observed.compressed.mediator_design, observed.compressed.mediator)
+    reach = 6.5 * np.linalg.norm(residual) / np.sqrt(observed.rows.used)
     ends = np.array([observed.mediator.min() - reach, observed.mediator.max() + reach])
     row = with_values(observed.frame.iloc[[0, 0]], {observed.exposure: observed.contrast[1]})
     try:
@@ -79,14 +79,15 @@ def _curved(observed: Observed) -> Iterator[Finding]:
 
 def rank_findings(observed: Observed, deficiencies: dict[str, tuple[Deficiency, ...]]) -> Iterator[Finding]:
     """Yield which terms add nothing, or nearly nothing, to the others."""
+    compressed = observed.compressed
     for equation, found in deficiencies.items():
         for deficiency in found:
             yield Finding("stops the fit", "rank", f"{equation} equation: {deficiency}; remove one of these terms")
         if not found:
             design, terms = (
-                (observed.mediator_design, observed.mediator_terms)
+                (compressed.mediator_design, observed.mediator_terms)
                 if equation == "mediator"
-                else (observed.outcome_design, observed.outcome_terms)
+                else (compressed.outcome_design, observed.outcome_terms)
             )
             for term, share in _nearly_dependent(design, terms):
                 yield Finding(
@@ -95,9 +96,11 @@ def rank_findings(observed: Observed, deficiencies: dict[str, tuple[Deficiency, 
                     f"{equation} equation: {term} is nearly a combination of other terms; only a share of "
                     f"{share:.1g} of it is its own",
                 )
-        response = observed.mediator if equation == "mediator" else observed.outcome
-        design = observed.mediator_design if equation == "mediator" else observed.outcome_design
-        if np.linalg.norm(residuals(design, response)) <= 1e-10 * np.linalg.norm(response - response.mean()):
+        response = compressed.mediator if equation == "mediator" else compressed.outcome
+        design = compressed.mediator_design if equation == "mediator" else compressed.outcome_design
+        side = compressed.sides[0 if equation == "mediator" else 1]
+        spread = np.linalg.norm(compressed.summary.centred([side]))
+        if np.linalg.norm(residuals(design, response)) <= 1e-10 * spread:
             yield Finding(
                 "stops the fit",
                 "rank",

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import weakref
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Any
 
 import numpy as np
@@ -13,6 +13,7 @@ import pandas as pd
 from bayesmed.core.contrasts import LinearMoments, chunks
 from bayesmed.core.errors import ArgumentError, DesignError, FormulaError
 from bayesmed.core.mapping import Array
+from bayesmed.study.batches import CompleteBatches
 from bayesmed.study.changed import repeated, with_values
 from bayesmed.study.designs import Design
 from bayesmed.study.groups import MOST_ROWS, Groups, groups_of
@@ -55,13 +56,30 @@ def linear_moments(observed: Observed, points: Points) -> LinearMoments:
             f"outcome: {observed.outcome_formula!r} is not linear in {observed.mediator_name}; averages "
             "alone do not give its effects."
         )
-    groups = groups_of(observed, points.names)
     anchors = anchors_of(observed)
+    groups = groups_of(observed, points.names)
+    if observed.batches is not None and (groups.base or len(groups.rows) > 1 or groups.keyed):
+        return _over_batches(observed, observed.batches, points, anchors)
+    return LinearMoments(**_at_points(observed, groups, points, anchors))
+
+
+def _at_points(observed: Observed, groups: Groups, points: Points, anchors: Anchors) -> dict[str, Array]:
     parts = [
         _moments(observed, groups, points.values[piece], anchors)
         for piece in chunks(len(points.values), max(1, MOST_ROWS // (SETTINGS * len(groups.rows))))
     ]
-    return LinearMoments(**{name: np.concatenate([part[name] for part in parts]) for name in parts[0]})
+    return {name: np.concatenate([part[name] for part in parts]) for name in parts[0]}
+
+
+def _over_batches(observed: Observed, batches: CompleteBatches, points: Points, anchors: Anchors) -> LinearMoments:
+    """Return the averages over all rows as those of batches, weighted by their rows."""
+    sums: dict[str, Array] = {}
+    for frame in batches.frames():
+        here = replace(observed, frame=frame)
+        part = _at_points(here, groups_of(here, points.names), points, anchors)
+        share = len(frame) / batches.rows.used
+        sums = {name: sums.get(name, 0.0) + share * value for name, value in part.items()}
+    return LinearMoments(**sums)
 
 
 @dataclass(frozen=True, eq=False)
@@ -126,6 +144,11 @@ def curved_rows(observed: Observed, point: Mapping[str, Any]) -> CurvedRows:
     point : dict
         One of ``points(…).values``.
     """
+    if observed.batches is not None:
+        raise DesignError(
+            f"outcome: {observed.outcome_formula!r} is not linear in {observed.mediator_name}, so its effects need "
+            "every row in memory at once; give the study a frame and not batches."
+        )
     frames = [with_values(observed.frame, {**point, observed.exposure: x}) for x in observed.contrast]
     try:
         low, high = (observed.mediator_equation.rows(frame) for frame in frames)

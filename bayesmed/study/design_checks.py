@@ -14,8 +14,7 @@ from bayesmed.study.expressions import Expression
 from bayesmed.study.formulas import Formula
 
 WIDEST = 2_000
-MOST_CELLS = 100_000_000
-"""Most columns, and most numbers, of a design."""
+"""Most columns of a design."""
 
 
 def check_labels(labels: tuple[str, ...], argument: str) -> None:
@@ -33,12 +32,11 @@ def check_width(formula: Formula, argument: str, frame: pd.DataFrame) -> None:
     for term in formula.terms:
         width = math.prod(_factor_width(factor, argument, frame) for factor in term)
         total += width
-        if total > WIDEST or total * len(frame) > MOST_CELLS:
+        if total > WIDEST:
             label = ":".join(factor.label for factor in term)
             raise DesignError(
                 f"{argument}: with the term {label}, of up to {width} columns, the design gets {total} "
-                f"columns in {len(frame)} rows; at most {WIDEST} columns and {MOST_CELLS:,} numbers are "
-                "allowed."
+                f"columns in {len(frame)} rows; at most {WIDEST} columns are allowed."
             )
 
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import copy
 import re
 import warnings
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -24,8 +24,14 @@ from bayesmed.study.formulas import Formula
 from bayesmed.study.transforms import CONTRASTS, TRANSFORMS, as_number, both, either, opposite
 from bayesmed.study.vocabulary import Vocabulary
 
+CHUNK = 50_000
+"""Rows of a design that are made at a time, to bound memory."""
+
 REPRODUCED = 1e-8
 """Largest difference, relative to a column's size, when a design is evaluated again on its own rows."""
+
+Rows = Callable[[frozenset[str], bool], tuple[pd.DataFrame, Array | None]]
+"""Returns columns of all rows, and the mediator in all rows if asked."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -87,9 +93,16 @@ class Design:
 
 
 def design(
-    formula: Formula, argument: str, words: Vocabulary, frame: pd.DataFrame, mediator: Array | None
+    formula: Formula,
+    argument: str,
+    words: Vocabulary,
+    frame: pd.DataFrame,
+    mediator: Array | None,
+    whole: Rows | None = None,
 ) -> tuple[Design, Array]:
-    """Return the design of a formula and its values on the rows given.
+    """Return the design of a formula, fixed on the rows given, and its values on the first of them.
+
+    Where the rows given are only some of the study's, `whole` returns columns of all, and the mediator if asked.
 
     Raises
     ------
@@ -99,21 +112,43 @@ def design(
         If there are fewer rows than columns.
     """
     check_width(formula, argument, frame)
-    spec = ModelSpec(formula=_formulaic(formula), output="numpy", na_action="ignore")
-    encoded = _encoded(frame, mediator, _factors(formula), words)
+    first = frame.iloc[:CHUNK]
+    m_first = None if mediator is None else mediator[:CHUNK]
+    if whole is None and len(first) < len(frame):
+
+        def whole(names: frozenset[str], with_mediator: bool) -> tuple[pd.DataFrame, Array | None]:
+            return frame, mediator
+
+    state = {} if whole is None else _remembered(formula, argument, words, whole)
+    spec = ModelSpec(formula=_formulaic(formula), output="numpy", na_action="ignore", **state)
+    encoded = _encoded(first, m_first, _factors(formula), words)
     values, spec = _evaluated(spec, encoded, argument, words)
     labels, columns, with_mediator = _described(formula, spec, words)
     check_labels(labels, argument)
     types = {name: frame[name].dtype for factor in _factors(formula) for name in factor.coded}
     made = Design(argument, labels, columns, with_mediator, types, formula, spec, words)
-    check_finite(values, frame.index, labels, argument)
-    if len(values) <= values.shape[1]:
+    check_finite(values, first.index, labels, argument)
+    if len(frame) <= values.shape[1]:
         raise DesignError(
-            f"{argument}: {len(values)} complete rows cannot determine {values.shape[1]} terms and the "
+            f"{argument}: {len(frame)} complete rows cannot determine {values.shape[1]} terms and the "
             "spread around them; use fewer terms or more rows."
         )
-    _check_reproduced(made, values, frame, mediator)
+    _check_reproduced(made, values, first, m_first)
     return made, values
+
+
+def _remembered(formula: Formula, argument: str, words: Vocabulary, whole: Rows) -> dict[str, dict[str, Any]]:
+    """Return what transforms and codings keep of all rows, such as means and knots: one factor at a time."""
+    transforms: dict[str, Any] = {}
+    codings: dict[str, Any] = {}
+    for factor in {f.code: f for f in _factors(formula) if not f.is_plain}.values():
+        alone = SimpleFormula([Term([Factor("1", eval_method="literal")]), Term([_factor(factor)])], _ordering="none")
+        spec = ModelSpec(formula=alone, output="numpy", na_action="ignore")
+        encoded = _encoded(*whole(factor.columns, factor.has_mediator), [factor], words)
+        spec = _evaluated(spec, encoded, argument, words)[1]
+        transforms |= spec.transform_state
+        codings |= spec.encoder_state
+    return {"transform_state": transforms, "encoder_state": codings}
 
 
 def left_values(expression: Expression, argument: str, words: Vocabulary, frame: pd.DataFrame) -> Array:

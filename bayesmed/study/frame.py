@@ -120,15 +120,15 @@ def complete(source: Given, names: Sequence[str]) -> Complete:
         If a column has a type or value that cannot be used, or no row is complete.
     """
     frame = source.select(names)
-    text = frozenset(name for name in names if _is_text(frame[name]))
-    typed = {name: _typed(name, frame[name]) for name in names}
+    text = frozenset(name for name in names if text_column(frame[name]))
+    typed = {name: typed_column(name, frame[name]) for name in names}
     missing = {name: int(column.isna().sum()) for name, column in typed.items()}
     missing = {name: count for name, count in missing.items() if count}
     whole = ~np.logical_or.reduce([np.asarray(column.isna()) for column in typed.values()])
     positions = np.flatnonzero(whole)
     if not len(positions):
         raise DataError(_none_complete(missing, source.rows))
-    kept = {name: _plain(column.iloc[positions]) for name, column in typed.items()}
+    kept = {name: plain_column(column.iloc[positions]) for name, column in typed.items()}
     unused = {
         name: tuple(set(column.cat.categories) - set(kept[name].cat.categories))
         for name, column in typed.items()
@@ -158,7 +158,8 @@ def _converted(data: Any) -> Any:
         ) from None
 
 
-def _is_text(column: pd.Series[Any]) -> bool:
+def text_column(column: pd.Series[Any]) -> bool:
+    """Return whether a column holds text."""
     if isinstance(column.dtype, pd.CategoricalDtype):
         return False
     return pd.api.types.is_string_dtype(column.dtype) and (
@@ -166,14 +167,14 @@ def _is_text(column: pd.Series[Any]) -> bool:
     )
 
 
-def _typed(name: str, column: pd.Series[Any]) -> pd.Series[Any]:
+def typed_column(name: str, column: pd.Series[Any]) -> pd.Series[Any]:
     """Return the column as a number, truth value or categorical, missing values still in it."""
     if isinstance(column.dtype, pd.SparseDtype):
         column = pd.Series(np.asarray(column), index=column.index, name=column.name)
     dtype = column.dtype
     if isinstance(dtype, pd.CategoricalDtype):
         return _plain_levels(column)
-    if _is_text(column):
+    if text_column(column):
         return column.astype(object).where(column.notna(), None).astype("category")
     if pd.api.types.is_object_dtype(dtype):
         column = _objects(name, column)
@@ -217,7 +218,7 @@ def _plain_levels(column: pd.Series[Any]) -> pd.Series[Any]:
     return column.cat.rename_categories([str(level) for level in levels])
 
 
-def _plain(column: pd.Series[Any]) -> pd.Series[Any]:
+def plain_column(column: pd.Series[Any]) -> pd.Series[Any]:
     """Return a column without missing values as a plain numpy type, or with the levels that occur."""
     if isinstance(column.dtype, pd.CategoricalDtype):
         return column.cat.remove_unused_categories()

@@ -30,12 +30,15 @@ class Groups:
         The group of every row.
     base : bool
         True if the mediator design itself must be averaged within groups.
+    keyed : bool
+        True if some column tells groups apart.
     """
 
     rows: np.ndarray[Any, np.dtype[np.intp]]
     weights: Array
     member: np.ndarray[Any, np.dtype[np.intp]]
     base: bool
+    keyed: bool
 
 
 def groups_of(observed: Observed, named: Sequence[str]) -> Groups:
@@ -62,4 +65,4 @@ def groups_of(observed: Observed, named: Sequence[str]) -> Groups:
     weights = np.bincount(member, minlength=len(rows)) / len(member)
     # Only where the exposure changes the mediator's slope does the mediator's level enter.
     base = bool(np.any(y_design.holding(exposure) & y_design.with_mediator))
-    return Groups(rows, weights, member, base)
+    return Groups(rows, weights, member, base, bool(key))

@@ -126,9 +126,10 @@ def informed(observed: Observed) -> Informed:
     terms = tuple(observed.mediator_terms[j] for j in informing)
     if not terms and not functional_form:
         return Informed((), False, 0, None, None, math.inf)
-    v, w, m = observed.mediator_design, observed.outcome_design, observed.mediator
+    compressed = observed.compressed
+    v, w, m = compressed.mediator_design, compressed.outcome_design, compressed.mediator
     residual = _split(v, m)[1]
-    df = len(m) - _rank(v)
+    df = observed.rows.used - _rank(v)
     sigma_m = math.sqrt(residual @ residual / df)
     beyond = _split(w, residual)[1]
     error = sigma_m / float(np.linalg.norm(beyond))
@@ -173,7 +174,7 @@ def _split(design: Array, values: Array) -> tuple[Array, Array]:
     size = np.linalg.norm(design, axis=0)
     size[size == 0] = 1.0
     scaled = design / size
-    fitted = scaled @ np.linalg.lstsq(scaled, values, rcond=None)[0]
+    fitted = scaled @ np.linalg.lstsq(scaled, values, rcond=DEPENDENT)[0]
     return fitted, values - fitted
 
 
@@ -182,4 +183,4 @@ def _rank(design: Array) -> int:
         return 0
     size = np.linalg.norm(design, axis=0)
     size[size == 0] = 1.0
-    return int(np.linalg.matrix_rank(design / size))
+    return int(np.linalg.matrix_rank(design / size, rtol=DEPENDENT))

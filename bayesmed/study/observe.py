@@ -2,20 +2,24 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
+from concurrent.futures import Executor
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 import pandas as pd
 
+from bayesmed.core.contrasts import chunks
 from bayesmed.core.errors import ArgumentError, DataError, FormulaError
 from bayesmed.core.mapping import Alignment, Array, align
+from bayesmed.study.batches import Batches, CompleteBatches, batched, complete_batches
 from bayesmed.study.changed import repeated, with_values
-from bayesmed.study.designs import Design, design, left_values
+from bayesmed.study.compressed import Compressed, compress
+from bayesmed.study.designs import CHUNK, Design, Rows, design, left_values
 from bayesmed.study.exposure import contrast_of
-from bayesmed.study.formulas import Formulas, read
-from bayesmed.study.frame import Complete, RowsUsed, complete, given
+from bayesmed.study.formulas import Formula, Formulas, read
+from bayesmed.study.frame import Complete, Given, RowsUsed, complete, given
 from bayesmed.study.identifiers import Identifier, identifiers
 from bayesmed.study.moderators import Moderator, default_moderators, moderators_found
 
@@ -41,10 +45,10 @@ class Observed:
         As given.
     mediator_terms, outcome_terms : tuple of str
         The columns of the two designs.
-    mediator_design : array, shape (row, mediator_term)
-    outcome_design : array, shape (row, outcome_term)
     mediator, outcome : array, shape (row,)
         The values of the expressions left of ``~``.
+    compressed : Compressed
+        Both designs and both sides, reduced to their inner products in one pass.
     alignment : Alignment
         Where the mediator and its terms stand in the outcome design.
     moderators : tuple of Moderator
@@ -62,6 +66,9 @@ class Observed:
         The two right sides, to be evaluated on changed rows.
     published : Published or None
         The figures of a study without its rows, whose moments the rows here have.
+    batches : CompleteBatches or None
+        Where the rows come batch by batch: then `frame`, `mediator` and `outcome` hold some evenly spaced rows only,
+        and `compressed` all.
     """
 
     frame: pd.DataFrame
@@ -73,10 +80,9 @@ class Observed:
     outcome_formula: str
     mediator_terms: tuple[str, ...]
     outcome_terms: tuple[str, ...]
-    mediator_design: Array = field(repr=False)
-    outcome_design: Array = field(repr=False)
     mediator: Array = field(repr=False)
     outcome: Array = field(repr=False)
+    compressed: Compressed = field(repr=False)
     alignment: Alignment = field(repr=False)
     moderators: tuple[Moderator, ...]
     default_moderators: tuple[str, ...]
@@ -87,10 +93,11 @@ class Observed:
     mediator_equation: Design = field(repr=False)
     outcome_equation: Design = field(repr=False)
     published: Published | None = field(default=None, repr=False)
+    batches: CompleteBatches | None = field(default=None, repr=False)
 
     def span(self, name: str) -> tuple[float, float]:
         """Return the range of a numeric column, or two SDs about its mean where there are only published figures."""
-        column = self.frame[name]
+        column = self.column(name)
         if self.published is None:
             return float(column.min()), float(column.max())
         return float(column.mean() - 2 * column.std()), float(column.mean() + 2 * column.std())
@@ -101,6 +108,42 @@ class Observed:
         left = self.formulas.mediator.columns | self.formulas.outcome.columns
         return tuple(name for name in self.formulas.columns if name in left and name != self.exposure)
 
+    @property
+    def mediator_design(self) -> Array:
+        """The mediator design on all rows, shape (row, mediator_term), made anew at each call."""
+        self._require_rows()
+        parts = [self.mediator_equation.rows(self.frame.iloc[piece]) for piece in self._pieces()]
+        return _frozen(np.concatenate(parts))
+
+    @property
+    def outcome_design(self) -> Array:
+        """The outcome design on all rows, shape (row, outcome_term), made anew at each call."""
+        self._require_rows()
+        parts = [self.outcome_equation.rows(self.frame.iloc[p], self.mediator[p]) for p in self._pieces()]
+        return _frozen(np.concatenate(parts))
+
+    def designs(self) -> Iterator[tuple[Array, Array]]:
+        """Yield the two designs on a chunk of rows after the other."""
+        for piece in self._pieces():
+            frame = self.frame.iloc[piece]
+            yield self.mediator_equation.rows(frame), self.outcome_equation.rows(frame, self.mediator[piece])
+
+    def column(self, name: str) -> pd.Series[Any]:
+        """Return a column of the data in all rows used; of batches, in memory at once."""
+        column = self.frame[name]
+        if self.batches is None or isinstance(column.dtype, pd.CategoricalDtype) or column.dtype == bool:
+            return column
+        return self.batches.whole([name])[name]
+
+    def _require_rows(self) -> None:
+        if self.batches is not None:
+            raise DataError("data: this needs every row in memory at once; give the study a frame and not batches.")
+        if self.published is not None:
+            raise DataError("data: this needs rows, and the study is known by its published figures alone.")
+
+    def _pieces(self) -> Iterator[slice]:
+        return chunks(len(self.frame), CHUNK)
+
 
 def observe(
     data: Any,
@@ -110,12 +153,14 @@ def observe(
     mediator: str,
     outcome: str,
     moderators: Sequence[str] | None = None,
+    executor: Executor | None = None,
 ) -> Observed:
     """Return what was observed.
 
     Parameters
     ----------
     data : pandas.DataFrame, dict of columns, or any eager frame that narwhals knows
+        Or batches: the path of a Parquet file, a list of frames, a function that returns an iterator of frames.
     exposure : str
         A numeric, boolean or categorical column.
     contrast : two values, optional
@@ -124,17 +169,24 @@ def observe(
         Formulas, such as ``"exercise ~ coaching + age"`` and ``"function ~ exercise * age + coaching"``.
     moderators : list of str, optional
         Which of the moderators found get a default grid; all of them by default.
+    executor : concurrent.futures.Executor, optional
+        Summarises batches side by side.
 
     Raises
     ------
     DataError, FormulaError, DesignError, ArgumentError
         Naming the column, formula piece or argument at fault.
     """
-    source = given(data)
+    source = batched(data) or given(data)
     if not isinstance(exposure, str):
         raise ArgumentError(f"exposure: expected the name of a column, got {exposure!r}.")
     formulas = read(mediator, outcome, exposure, source.names)
-    used = complete(source, formulas.columns)
+    batches = None
+    if isinstance(source, Batches):
+        batches = complete_batches(source, formulas.columns)
+        used = Complete(batches.kept, np.arange(0), batches.rows, batches.text, batches.unused_levels)
+    else:
+        used = complete(source, formulas.columns)
     levels = _level_texts(used.frame)
     if any(formulas.words.prefix in level for level in levels):
         # A level that looks like one of our placeholders: take other placeholders.
@@ -143,9 +195,14 @@ def observe(
     found = moderators_found(formulas, exposure, frame)
     pair = contrast_of(frame[exposure], contrast, was_text=exposure in used.text)
     sides = _sides(formulas, used)
-    m_design, m_values = design(formulas.mediator, "mediator", formulas.words, frame, None)
-    y_design, y_values = design(formulas.outcome, "outcome", formulas.words, frame, sides[0])
+    whole = None if batches is None else _whole_rows(batches, formulas)
+    m_design, m_first = design(formulas.mediator, "mediator", formulas.words, frame, None, whole)
+    y_design, y_first = design(formulas.outcome, "outcome", formulas.words, frame, sides[0], whole)
     _check_contrast_rows(m_design, y_design, frame, exposure, pair, sides[0])
+    reading = None if batches is None else _with_sides(batches, formulas)
+    compressed = compress(
+        m_design, y_design, frame, *sides, (m_first, y_first), formulas.mediator.left.label, reading, executor
+    )
     return Observed(
         frame=frame,
         exposure=exposure,
@@ -156,20 +213,39 @@ def observe(
         outcome_formula=outcome,
         mediator_terms=m_design.labels,
         outcome_terms=y_design.labels,
-        mediator_design=_frozen(m_values),
-        outcome_design=_frozen(y_values),
         mediator=_frozen(sides[0]),
         outcome=_frozen(sides[1]),
-        alignment=align(m_values, y_values, sides[0]),
+        compressed=compressed,
+        alignment=align(compressed.mediator_design, compressed.outcome_design, compressed.mediator),
         moderators=found,
         default_moderators=default_moderators(found, moderators),
         rows=used.rows,
         unused_levels=used.unused_levels,
-        identifiers=identifiers(source, formulas.columns, used.positions),
+        identifiers=identifiers(source, formulas.columns, used.positions) if isinstance(source, Given) else (),
         formulas=formulas,
         mediator_equation=m_design,
         outcome_equation=y_design,
+        batches=batches,
     )
+
+
+def _whole_rows(batches: CompleteBatches, formulas: Formulas) -> Rows:
+    def rows(names: frozenset[str], with_mediator: bool) -> tuple[pd.DataFrame, Array | None]:
+        left = formulas.mediator.left
+        frame = batches.whole(sorted(names | (left.columns if with_mediator else frozenset())))
+        return frame, left_values(left, "mediator", formulas.words, frame) if with_mediator else None
+
+    return rows
+
+
+def _with_sides(batches: CompleteBatches, formulas: Formulas) -> Iterator[tuple[pd.DataFrame, Array, Array]]:
+    for frame in batches.frames():
+        m, y = (left_values(f.left, a, formulas.words, frame) for f, a in _named_sides(formulas))
+        yield frame, m, y
+
+
+def _named_sides(formulas: Formulas) -> tuple[tuple[Formula, str], ...]:
+    return (formulas.mediator, "mediator"), (formulas.outcome, "outcome")
 
 
 def _sides(formulas: Formulas, used: Complete) -> tuple[Array, Array]:

@@ -111,7 +111,7 @@ def _default(observed: Observed) -> Points:
 
 
 def _default_values(observed: Observed, name: str) -> tuple[Any, ...]:
-    column = observed.frame[name]
+    column = observed.column(name)
     levels = _levels(column)
     categorical = kind_of(column, coded=name in coded_columns(observed.formulas)) == "categorical"
     if categorical or len(levels) <= FEW_VALUES:
@@ -204,7 +204,7 @@ def _warn_outside(observed: Observed, dims: Mapping[str, tuple[Any, ...]], scala
     if observed.published is not None:
         return
     for name, values in {**dims, **{n: (v,) for n, v in scalars.items()}}.items():
-        column = observed.frame[name]
+        column = observed.column(name)
         if isinstance(column.dtype, pd.CategoricalDtype) or column.dtype == bool:
             continue
         low, high = column.min(), column.max()

@@ -17,6 +17,8 @@ import pandas as pd
 
 from bayesmed.core.errors import ArgumentError, DataError, FormulaError
 from bayesmed.core.mapping import Array, align
+from bayesmed.core.row_summary import summarised
+from bayesmed.study.compressed import Compressed
 from bayesmed.study.formulas import Formula, Formulas, read
 from bayesmed.study.frame import RowsUsed
 from bayesmed.study.observe import Observed, observe
@@ -120,15 +122,14 @@ def observe_published(
     observed = observe(
         frame, exposure=exposure, contrast=contrast, mediator=mediator, outcome=outcome, moderators=moderators
     )
-    designs = {
-        argument: np.column_stack([_column(names, argument, frame) for names in made])
-        for argument, made in terms.items()
-    }
+    v, w = (np.column_stack([_column(names, argument, frame) for names in made]) for argument, made in terms.items())
+    p, q = v.shape[1], w.shape[1]
+    summary = summarised(np.column_stack([v, w, observed.mediator, observed.outcome]))
+    compressed = Compressed(summary, tuple(range(p)), tuple(range(p, p + q)), (p + q, p + q + 1))
     return dataclasses.replace(
         observed,
-        mediator_design=designs["mediator"],
-        outcome_design=designs["outcome"],
-        alignment=align(designs["mediator"], designs["outcome"], observed.mediator),
+        compressed=compressed,
+        alignment=align(compressed.mediator_design, compressed.outcome_design, compressed.mediator),
         rows=RowsUsed(moments.rows, moments.rows, 0, {}),
         published=published,
     )

@@ -77,16 +77,22 @@ def residual_spread(observed: Observed) -> tuple[Spread, ...]:
     row, is left out.
     """
     found = []
-    for equation, design, values in (
-        ("mediator", observed.mediator_design, observed.mediator),
-        ("outcome", observed.outcome_design, observed.outcome),
-    ):
-        residual = residuals(design, values)
+    for equation, residual in zip(("mediator", "outcome"), _row_residuals(observed), strict=True):
         for along in (observed.exposure, *(moderator.name for moderator in observed.moderators)):
             spread = compared(equation, residual, observed.frame[along])
             if spread is not None:
                 found.append(spread)
     return tuple(found)
+
+
+def _row_residuals(observed: Observed) -> tuple[Array, Array]:
+    """Return the least-squares residuals of both regressions, shape (row,), chunk by chunk."""
+    compressed = observed.compressed
+    alpha = _least_squares(compressed.mediator_design, compressed.mediator)
+    gamma = _least_squares(compressed.outcome_design, compressed.outcome)
+    fitted = [(v @ alpha, w @ gamma) for v, w in observed.designs()]
+    m, y = (np.concatenate(parts) for parts in zip(*fitted, strict=True))
+    return observed.mediator - m, observed.outcome - y
 
 
 def compared(equation: str, residual: Array, along: pd.Series[Any]) -> Spread | None:
@@ -105,10 +111,13 @@ def compared(equation: str, residual: Array, along: pd.Series[Any]) -> Spread | 
 
 def residuals(design: Array, values: Array) -> Array:
     """Return least-squares residuals, whatever the rank of the design."""
+    return np.asarray(values - design @ _least_squares(design, values))
+
+
+def _least_squares(design: Array, values: Array) -> Array:
     size = np.linalg.norm(design, axis=0)
     size[size == 0] = 1.0
-    scaled = design / size
-    return np.asarray(values - scaled @ np.linalg.lstsq(scaled, values, rcond=None)[0])
+    return np.asarray(np.linalg.lstsq(design / size, values, rcond=1e-13)[0] / size)
 
 
 def _along_number(equation: str, residual: Array, along: pd.Series[Any]) -> Spread | None:
