@@ -81,7 +81,7 @@ def _run(chosen: argparse.Namespace) -> int:
         return check(study)
     from bayesmed.cli.report import report
 
-    return report(study, chosen.out, quiet=chosen.quiet)
+    return report(study, chosen.out, quiet=chosen.quiet, rows=not chosen.without_rows)
 
 
 def _study_path(given: str) -> Path:
@@ -121,6 +121,7 @@ def _parser() -> argparse.ArgumentParser:
         command.add_argument("study", metavar="STUDY", help="study file (TOML), or the name of an example")
         if name == "report":
             command.add_argument("--out", metavar="FOLDER", required=True, help="folder to write into")
+            command.add_argument("--without-rows", action="store_true", help="keep nothing of the participants' rows")
             command.add_argument("--quiet", action="store_true", help="print warnings and errors only")
     return parser
 

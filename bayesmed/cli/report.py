@@ -13,7 +13,7 @@ from bayesmed.report.study_file import StudyFile, read_study_file
 from bayesmed.study.points import points
 
 
-def report(path: Path, folder: str, *, quiet: bool) -> int:
+def report(path: Path, folder: str, *, quiet: bool, rows: bool = True) -> int:
     """Fit a study, print the comparison of its beliefs, write the folder, and return the exit code."""
     with steps(quiet=quiet) as say:
         say("Reading the study and its data")
@@ -35,7 +35,7 @@ def report(path: Path, folder: str, *, quiet: bool) -> int:
             print_words(console, sentence)
     with steps(quiet=quiet) as say:
         say("Drawing the picture and writing the folder")
-        written = write_findings(found, folder)
+        written = write_findings(found, folder, rows=rows)
     if not quiet:
         names = ", ".join(sorted(each.name for each in written.iterdir() if not each.name.startswith(".")))
         print_words(console, f"\nWritten to {folder}: {names}")
