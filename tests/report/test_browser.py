@@ -19,11 +19,11 @@ from bayesmed.report.document import document
 from bayesmed.report.findings import Findings, find
 from bayesmed.report.page import Page, as_page, explore, vector_images
 from tests.report.chromium import Browser, chromium, why_missing
+from tests.report.hostile import HOSTILE, hostile
 
 pytestmark = pytest.mark.skipif(bool(why_missing()), reason=why_missing())
 
 AT = {"confidence": [4, 6, 8]}
-HOSTILE = '<img src=x onerror="window.harmed=1">"\'</script><script>window.harmed=1</script> & שלום 🦵 ' + "x" * 300
 MEAN = 0.25
 
 
@@ -59,22 +59,6 @@ def pages(knee: FitResult, chained: FitResult, tmp_path_factory: pytest.TempPath
 
 def _bare(found: Findings, pictures: dict[str, Picture]) -> Page:
     return Page(as_page(document(found, pictures), vector_images(pictures)))
-
-
-def hostile() -> Any:
-    """Findings of a study whose columns, levels, labels and title are written to do harm."""
-    random = np.random.default_rng(1)
-    names = {"x": "<script>window.harmed=1</script>", "m": "m " + HOSTILE, "g": 'g"><b>'}
-    data = {
-        names["x"]: np.tile([0, 1], 40),
-        names["m"]: random.normal(size=80),
-        names["g"]: np.tile(["=1+1", HOSTILE], 40)[random.permutation(80)],
-        "y": random.normal(size=80),
-    }
-    m, x, g = (f"`{names[key]}`" for key in "mxg")
-    study = bm.Study(data, exposure=names["x"], mediator=f"{m} ~ {x} + {g}", outcome=f"y ~ {m} * {g} + {x}")
-    fit = study.fit(method="exact", draws=50, random_seed=1, progressbar=False)
-    return find(fit.result, {HOSTILE: 0.0, "=1": bm.LKJ(2)}, None, title=HOSTILE)
 
 
 @pytest.fixture(scope="module")

@@ -1,5 +1,6 @@
 """The study file that a report writes makes the same numbers again, and rows can be left out."""
 
+import csv
 import hashlib
 import json
 from pathlib import Path
@@ -8,6 +9,7 @@ import numpy as np
 import pandas as pd
 import pytest
 import xarray as xr
+from markdown_it import MarkdownIt
 
 import bayesmed as bm
 from bayesmed.cli import main
@@ -16,6 +18,7 @@ from bayesmed.fit.result import FitResult
 from bayesmed.report.findings import find
 from bayesmed.report.folder import MARKER, write_findings
 from bayesmed.report.request import study_request
+from tests.report.hostile import HOSTILE, hostile
 
 AT = {"confidence": [4, 8]}
 BELIEFS = {
@@ -147,3 +150,29 @@ def test_published_figures_and_groups_have_a_report(tmp_path: Path, knee: FitRes
     assert told["not_in_the_folder"] == {
         "study.toml": "the fit has a rho for each group, which a study file cannot ask for"
     }
+
+
+def test_a_hostile_study_fills_a_folder_and_nothing_in_it_acts(tmp_path: Path) -> None:
+    folder = write_findings(hostile(), tmp_path / "out")
+    told = json.loads((folder / MARKER).read_text(encoding="utf-8"))
+    assert told["title"] == HOSTILE
+    assert list(told["beliefs"]) == [HOSTILE, "=1"]
+    parsed = MarkdownIt("commonmark", {"html": True}).enable("table").parse((folder / "report.md").read_text("utf-8"))
+    kinds = {child.type for token in parsed for child in token.children or []} | {token.type for token in parsed}
+    assert not {"html_inline", "html_block", "link_open"} & kinds
+    for path in folder.glob("*.csv"):
+        with path.open(encoding="utf-8", newline="") as lines:
+            cells = [cell for row in csv.reader(lines) for cell in row]
+        words = [cell for cell in cells if not _number(cell)]
+        assert not any(cell.startswith(("=", "+", "-", "@")) for cell in words), path.name
+    comparison = pd.read_csv(folder / "comparison.csv")
+    assert set(comparison["prior"]) == {HOSTILE, "'=1"}
+    assert set(comparison['g"><b>']) == {HOSTILE, "'=1+1"}
+
+
+def _number(cell: str) -> bool:
+    try:
+        float(cell)
+    except ValueError:
+        return False
+    return True
