@@ -104,7 +104,7 @@ def _run(chosen: argparse.Namespace) -> int:
         return compare(study, as_json=chosen.json)
     from bayesmed.cli.report import report
 
-    return report(study, chosen.out, quiet=chosen.quiet, as_json=chosen.json)
+    return report(study, chosen.out, quiet=chosen.quiet, as_json=chosen.json, rows=not chosen.without_rows)
 
 
 def _study_path(given: str) -> Path:
@@ -150,6 +150,7 @@ def _parser() -> argparse.ArgumentParser:
         command.add_argument("study", metavar="STUDY", help="study file (TOML), or the name of an example")
         if name == "report":
             command.add_argument("--out", metavar="FOLDER", required=True, help="folder to write into")
+            command.add_argument("--without-rows", action="store_true", help="keep nothing of the participants' rows")
             command.add_argument("--quiet", action="store_true", help="print warnings and errors only")
         command.add_argument("--json", action="store_true", help="print one JSON document, for machines")
     return parser

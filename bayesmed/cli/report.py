@@ -8,7 +8,7 @@ from bayesmed.cli.printed import print_attention, print_comparison, print_words,
 from bayesmed.report.folder import check_folder, write_findings
 
 
-def report(path: Path, folder: str, *, quiet: bool, as_json: bool = False) -> int:
+def report(path: Path, folder: str, *, quiet: bool, as_json: bool = False, rows: bool = True) -> int:
     """Fit a study, print the comparison of its beliefs, write the folder, and return the exit code."""
     quiet = quiet or as_json
     check_folder(folder)
@@ -22,7 +22,7 @@ def report(path: Path, folder: str, *, quiet: bool, as_json: bool = False) -> in
             print_words(console, sentence)
     with steps(quiet=quiet) as say:
         say("Drawing the picture and writing the folder")
-        written = write_findings(found, folder)
+        written = write_findings(found, folder, rows=rows)
     names = sorted(each.name for each in written.iterdir() if not each.name.startswith("."))
     if as_json:
         print_json("report", {"folder": str(written), "files": names, **compared(found.comparison)})

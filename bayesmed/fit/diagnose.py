@@ -3,6 +3,7 @@
 import warnings
 
 import numpy as np
+import pandas as pd
 
 from bayesmed.core.errors import BayesmedError, SamplingWarning
 from bayesmed.core.mapping import Array
@@ -46,6 +47,18 @@ def complaints_about(result: FitResult) -> list[str]:
                 f"(should be at least {LEAST_ESS})"
             )
     return complaints
+
+
+def rank_diagnostics(result: FitResult) -> pd.DataFrame | None:
+    """Return r-hat and effective sample sizes of everything watched; None where there is nothing to diagnose.
+
+    Columns: quantity; rhat; bulk and tail, effective sample sizes.
+    """
+    if result.independent or result.shape[0] < 2 or result.shape[1] < 4 or "group" in result.posterior.dims:
+        return None
+    found = watched(result)
+    rhat, bulk, tail = _rank_diagnostics(np.stack(list(found.values())))
+    return pd.DataFrame({"quantity": list(found), "rhat": rhat, "bulk": bulk, "tail": tail})
 
 
 def watched(result: FitResult) -> dict[str, Array]:

@@ -25,11 +25,16 @@ LAYOUT = 1
 """Version of the file's layout; a file of a newer one is refused."""
 
 
-def save(result: FitResult, path: str | Path) -> Path:
+WITHOUT_ROWS = ("posterior", "sample_stats")
+"""Groups that hold nothing of single rows."""
+
+
+def save(result: FitResult, path: str | Path, *, rows: bool = True) -> Path:
     """Write a fit to a NetCDF file, whole or not at all; see ``Fit.save``.
 
     The rows used by the study (only its columns) are stored in the file, since conclusions at other moderator
-    values need them; of a study known by published figures, the figures.
+    values need them; of a study known by published figures, the figures. With ``rows=False`` draws, sampler statistics
+    and settings are stored and no row: such a file cannot be loaded as a fit, and xarray opens it.
     """
     target = Path(path)
     if not target.parent.is_dir():
@@ -39,9 +44,12 @@ def save(result: FitResult, path: str | Path) -> Path:
         raise FitError("save: the rows of this study come in batches and are not stored; keep the draws of fit.tree")
     tree = result.tree.copy()
     kinds: list[dict[str, Any]] = []
-    if observed.published is None:
-        rows, kinds = _encoded(observed.frame)
-        tree["rows"] = xr.DataTree(rows)
+    if not rows:
+        tree = xr.DataTree.from_dict({name: tree[name].to_dataset() for name in WITHOUT_ROWS if name in tree})
+        tree.attrs.update(result.tree.attrs)
+    elif observed.published is None:
+        encoded, kinds = _encoded(observed.frame)
+        tree["rows"] = xr.DataTree(encoded)
     tree.attrs["bayesmed_layout"] = LAYOUT
     tree.attrs["study"] = json.dumps(
         {
@@ -87,6 +95,11 @@ def load(path: str | Path) -> FitResult:
     roles = {name: study[name] for name in ("exposure", "contrast", "mediator", "outcome", "moderators")}
     if (source := study.get("published")) is not None:
         observed = observe_published(republished(source), **roles)
+    elif "rows" not in tree:
+        raise FitError(
+            f"load: {str(path)!r} was saved without the rows, which conclusions need; open its draws with "
+            "xarray.open_datatree, or save the fit with rows=True"
+        )
     else:
         observed = observe(_decoded(tree["rows"].to_dataset(), study["columns"]), **roles)
         del tree["rows"]

@@ -32,6 +32,7 @@ from bayesmed.front.yardsticks import Yardsticks
 
 if TYPE_CHECKING:
     from bayesmed.priors import Prior
+    from bayesmed.report.page import Page
 
 
 class Fit:
@@ -289,25 +290,47 @@ class Fit:
         claim: Claim | None = None,
         ci_prob: float = 0.95,
         title: str | None = None,
+        *,
+        rows: bool = True,
     ) -> Path:
-        """Write a folder with a summary in sentences, the tables as CSV and a picture, and return its path.
+        """Write a folder with the report as a page and as Markdown, tables, pictures, fit and study file; return it.
 
         Beliefs are those of ``bayesmed.priors.panel()`` if left out. A folder that bayesmed wrote is replaced, any
-        other that is not empty is refused.
+        other that is not empty is refused. ``fit.nc`` and ``rows.csv`` hold the rows used (the study's columns only);
+        ``rows=False`` leaves them out.
         """
         from bayesmed.report.folder import write_report
 
-        return write_report(self.result, folder, beliefs=beliefs, at=at, claim=claim, ci_prob=ci_prob, title=title)
+        return write_report(
+            self.result, folder, beliefs=beliefs, at=at, claim=claim, ci_prob=ci_prob, title=title, rows=rows
+        )
 
-    def save(self, path: str | Path) -> Path:
+    def explore(
+        self,
+        beliefs: Mapping[str, Any] | None = None,
+        at: Any = None,
+        claim: Claim | None = None,
+        ci_prob: float = 0.95,
+        title: str | None = None,
+    ) -> "Page":
+        """Return the report's page, which answers to a reader's own belief, and which a notebook shows.
+
+        The page holds draws of the effects and no row. Arguments are those of :meth:`report`.
+        """
+        from bayesmed.report.findings import find
+        from bayesmed.report.page import explore
+
+        return explore(find(self.result, beliefs, at, claim, ci_prob, title))
+
+    def save(self, path: str | Path, *, rows: bool = True) -> Path:
         """Write the fit to a NetCDF file, whole or not at all, and return its path.
 
         The file holds the rows used (the study's columns only), since other moderator values need them: treat it as
-        you treat the data.
+        you treat the data. With ``rows=False`` it holds the draws and no row; then it cannot be loaded as a fit.
         """
         from bayesmed.fit.store import save
 
-        return save(self.result, path)
+        return save(self.result, path, rows=rows)
 
     def __repr__(self) -> str:
         sentence, table = self._answer()

@@ -24,6 +24,36 @@ def assumptions(observed: Observed) -> tuple[str, ...]:
     )
 
 
+def randomisation(observed: Observed) -> tuple[str, ...]:
+    """Return what drawing lots for the exposure gives, and what it does not."""
+    x, m, y = observed.exposure, observed.mediator_name, observed.outcome_name
+    return (
+        f"If {x} was drawn by lot, nothing unmeasured causes both {x} and {m}, or both {x} and {y}: the effect "
+        f"of {x} on "
+        f"{m} and the total effect on {y} need no further assumption of that kind. Whether it was, the software "
+        f"cannot know.",
+        f"Nobody draws lots for {m}. Its effect on {y} can be confounded in the best of trials, and with it the "
+        f"indirect "
+        "and the direct effect: that is what ρ is there for.",
+    )
+
+
+def beyond_rho(observed: Observed) -> tuple[str, ...]:
+    """Return what may leave a correlation behind, or mislead, that no belief about rho repairs."""
+    x, m, y = observed.exposure, observed.mediator_name, observed.outcome_name
+    return (
+        f"A cause of both {m} and {y} that {x} itself changes. ρ stands for causes that {x} leaves alone; with "
+        f"one that it "
+        "moves, indirect and direct effects as defined here are not what any ρ gives.",
+        f"{m} measured with error: its path is pulled towards zero, which looks like a ρ and is none.",
+        f"The reverse order, {y} moving {m}: the correlation it leaves has no fixed ρ that would undo it.",
+        "Effects that vary between people: where those whose mediator moves more are also those in whom it "
+        "matters more, "
+        "what is left unexplained correlates without any confounder.",
+        "One person's exposure reaching another's outcome.",
+    )
+
+
 CAUTIONS = (
     "This summary is for research. It is not medical advice and not a recommendation to treat, teach or fund "
     "anyone in any way.",

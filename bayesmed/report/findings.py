@@ -1,4 +1,4 @@
-"""Everything a report says, worked out once from a fit: audit, comparison, grid of fixed rho, tipping."""
+"""Everything a report says, worked out once from a fit: audit, comparison, fixed rho, tipping, yardsticks."""
 
 import dataclasses
 import warnings
@@ -10,14 +10,20 @@ import pandas as pd
 
 from bayesmed.conclusions.claim import Claim
 from bayesmed.conclusions.comparison import ComparisonResult, compare
+from bayesmed.conclusions.envelope import envelope
 from bayesmed.conclusions.summary import rho_grid
 from bayesmed.conclusions.tipping import TippingResult, tipping
-from bayesmed.core.errors import BayesmedWarning
+from bayesmed.conclusions.yardsticks import YardsticksResult, yardsticks
+from bayesmed.core.errors import ArgumentError, BayesmedWarning
 from bayesmed.fit.diagnose import complaints_about
+from bayesmed.fit.grouped import GroupedResult
 from bayesmed.fit.result import FitResult
-from bayesmed.priors import panel
+from bayesmed.priors import AnyOn, panel
 from bayesmed.report.limits import Reach, reaches
 from bayesmed.study.audit import Audit, audit
+
+ANY_WITHIN = (-0.3, 0.3)
+"""The range of rho over which the smallest and largest probability are told, whatever the belief."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -39,6 +45,10 @@ class Findings:
         By moderator point, from which correlation on the interval takes in the limit.
     tipping : TippingResult or None
         None where no correlation tips the claim (the total effect), or the data inform rho.
+    yardsticks : YardsticksResult or None
+        None where there is no tipping, no covariate to compare with, or a rho for each group.
+    envelope : pandas.DataFrame or None
+        Smallest and largest probability over all beliefs within ``ANY_WITHIN``; None where there is no tipping.
     complaints : list of str
         Diagnostics outside their bounds.
     warnings : tuple of str
@@ -53,6 +63,8 @@ class Findings:
     grid: pd.DataFrame
     reaches: tuple[Reach, ...]
     tipping: TippingResult | None
+    yardsticks: YardsticksResult | None
+    envelope: pd.DataFrame | None
     complaints: list[str]
     warnings: tuple[str, ...]
 
@@ -101,6 +113,8 @@ def find(
             grid=grid,
             reaches=reaches(result, comparison.points, comparison.claim, ci_prob, grid),
             tipping=tipping(result, at, comparison.claim, ci_prob) if tips else None,
+            yardsticks=_yardsticks(result, at, comparison.claim) if tips else None,
+            envelope=envelope(result, AnyOn(*ANY_WITHIN), at, comparison.claim) if tips else None,
             complaints=complaints_about(result),
             warnings=(),
         )
@@ -116,3 +130,13 @@ def usual_beliefs(result: FitResult) -> dict[str, Any]:
     """Return the beliefs of a report that names none: the fit's own, then the documented default set."""
     own = {} if result.belief is None else {"the belief of this fit": result.belief}
     return {**own, **panel()}
+
+
+def _yardsticks(result: FitResult, at: Any, claim: Claim) -> YardsticksResult | None:
+    if isinstance(result, GroupedResult):
+        return None
+    try:
+        return yardsticks(result, at=at, claim=claim)
+    except ArgumentError:
+        # No covariate stands in terms of its own.
+        return None

@@ -5,23 +5,27 @@ import json
 import os
 import shutil
 import tempfile
-import warnings
 from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
-from importlib.metadata import version
 from pathlib import Path
 from typing import Any
 
 from bayesmed.conclusions.claim import Claim
-from bayesmed.core.errors import ArgumentError, ExtrapolationWarning
+from bayesmed.core.errors import ArgumentError
 from bayesmed.fit.result import FitResult
+from bayesmed.report.blocks import Diagram
+from bayesmed.report.diagram import standing_alone
+from bayesmed.report.document import document
 from bayesmed.report.findings import Findings, find
-from bayesmed.report.summary import PICTURE, summary_page
-from bayesmed.report.tables import csv_tables
+from bayesmed.report.keeping import keep_fit_and_study
+from bayesmed.report.manifest import manifest
+from bayesmed.report.markdown import as_markdown
+from bayesmed.report.page import as_page
+from bayesmed.report.pictures import drawn
+from bayesmed.report.tables import csv_tables, latex_tables
 
 MARKER = "bayesmed_report.json"
 """Lists what bayesmed wrote into a folder, with a checksum each, so that it replaces nothing else."""
-LAYOUT = 1
 
 
 def write_report(
@@ -33,11 +37,14 @@ def write_report(
     claim: Claim | None = None,
     ci_prob: float = 0.95,
     title: str | None = None,
+    rows: bool = True,
 ) -> Path:
     """Write a report on a fit into a folder and return the folder's path.
 
-    It holds ``report.md`` (the summary), ``comparison.csv``, ``rho_grid.csv``, ``tipping.csv`` (where there
-    is one), ``beliefs.csv``, and the picture ``effect_by_rho`` as PNG, SVG and text.
+    It holds ``report.html``, one page that needs no other file and no network; ``report.md``, the same as Markdown;
+    every table as CSV and LaTeX; every picture as SVG, PNG and text; the fit, ``fit.nc``; ``study.toml`` with
+    ``rows.csv``, from which ``bayesmed report`` makes the same numbers again; and ``bayesmed_report.json``, which names
+    versions, seed and checksums, and says why a file is not there.
 
     Parameters
     ----------
@@ -51,7 +58,9 @@ def write_report(
     at, claim, ci_prob :
         As in ``Fit.compare``.
     title : str, optional
-        Heading of the summary.
+        Heading of the report.
+    rows : bool
+        False keeps nothing of the participants' rows but a checksum of them.
 
     Raises
     ------
@@ -59,16 +68,15 @@ def write_report(
         If the folder cannot be used, or a belief, point or claim is not allowed.
     """
     check_folder(folder)
-    return write_findings(find(result, beliefs, at, claim, ci_prob, title), folder)
+    return write_findings(find(result, beliefs, at, claim, ci_prob, title), folder, rows=rows)
 
 
-def write_findings(findings: Findings, folder: str | Path) -> Path:
+def write_findings(findings: Findings, folder: str | Path, *, rows: bool = True) -> Path:
     """Write a report on findings into a folder, whole or not at all; see :func:`write_report`."""
     target = check_folder(folder)
     try:
         with _beside(target) as temporary:
-            _write_files(findings, temporary)
-            _mark(temporary)
+            _mark(temporary, _write_files(findings, temporary, rows))
             _move_into_place(temporary, target)
     except OSError as error:
         raise ArgumentError(f"folder {str(folder)!r} cannot be written: {error.strerror or error}") from error
@@ -105,31 +113,34 @@ def check_folder(folder: str | Path) -> Path:
     return target
 
 
-def _write_files(findings: Findings, folder: Path) -> None:
-    from bayesmed.plots.effect_by_rho import plot_effect_by_rho
-
-    for name, text in csv_tables(findings).items():
+def _write_files(findings: Findings, folder: Path, rows: bool) -> dict[str, Any]:
+    """Write every file but the marker, and return what the marker says of the run."""
+    for name, text in {**csv_tables(findings), **latex_tables(findings)}.items():
         _write(folder / name, text)
-    comparison = findings.comparison
-    at = {**{k: list(v) for k, v in comparison.points.dims.items()}, **comparison.points.scalars}
-    with warnings.catch_warnings():
-        # That points lie outside the data was said when they were first used.
-        warnings.simplefilter("ignore", ExtrapolationWarning)
-        picture = plot_effect_by_rho(findings.result, comparison.beliefs, at, comparison.claim, comparison.ci_prob)
-    picture.savefig(folder / PICTURE)
-    picture.savefig((folder / PICTURE).with_suffix(".svg"))
-    _write((folder / PICTURE).with_suffix(".txt"), f"{picture!r}\n")
-    _write(folder / "report.md", summary_page(findings))
+    pictures = drawn(findings)
+    for name, picture in pictures.items():
+        picture.savefig(folder / f"{name}.png")
+        picture.savefig(folder / f"{name}.svg")
+        _write(folder / f"{name}.txt", f"{picture!r}\n")
+    keeping = keep_fit_and_study(findings, folder, rows)
+    made = document(findings, pictures, keeping.sentences)
+    for section in made.sections:
+        for block in section.blocks:
+            if isinstance(block, Diagram):
+                _write(folder / f"{block.name}.svg", standing_alone(block))
+    _write(folder / "report.md", as_markdown(made))
+    images = {name: (folder / f"{name}.svg").read_bytes() for name in pictures}
+    _write(folder / "report.html", as_page(made, images))
+    return manifest(findings, keeping)
 
 
 def _write(path: Path, text: str) -> None:
     path.write_bytes(text.encode("utf-8"))
 
 
-def _mark(folder: Path) -> None:
+def _mark(folder: Path, content: dict[str, Any]) -> None:
     files = {path.name: _checksum(path) for path in sorted(folder.iterdir())}
-    content = {"written_by": "bayesmed", "version": version("bayesmed"), "layout": LAYOUT, "files": files}
-    _write(folder / MARKER, json.dumps(content, indent=2, ensure_ascii=False) + "\n")
+    _write(folder / MARKER, json.dumps({**content, "files": files}, indent=2, ensure_ascii=False) + "\n")
 
 
 def _written(folder: Path) -> dict[str, str]:

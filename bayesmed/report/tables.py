@@ -1,22 +1,65 @@
-"""The tables that a report writes as CSV files."""
+"""The tables that a report writes, as CSV for machines and spreadsheets and as LaTeX for papers."""
+
+from typing import Any
 
 import pandas as pd
 
 from bayesmed.report.findings import Findings
+from bayesmed.report.latex import latex_table
+
+FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r", "\n", "＝", "＋", "－", "＠")
+"""What a spreadsheet takes for a formula at the start of a cell (OWASP, CSV injection)."""
+
+
+def tables(findings: Findings) -> dict[str, pd.DataFrame]:
+    """Return name → table.
+
+    ``comparison`` holds every effect under every belief, ``rho_grid`` every effect at fixed correlations, ``beliefs``
+    what was believed. Where there are any: ``tipping``, the correlation at which draws cross the limit; ``yardsticks``
+    and ``overturning``, unmeasured causes beside measured covariates; ``any_belief``, the smallest and largest
+    probability over all beliefs within a range.
+    """
+    found = {"comparison": findings.comparison.table, "rho_grid": findings.grid}
+    if findings.tipping is not None:
+        found["tipping"] = findings.tipping.table
+    if findings.yardsticks is not None:
+        found["yardsticks"] = findings.yardsticks.table
+        found["overturning"] = findings.yardsticks.overturning
+    if findings.envelope is not None:
+        found["any_belief"] = findings.envelope
+    found["beliefs"] = _beliefs(findings)
+    return found
 
 
 def csv_tables(findings: Findings) -> dict[str, str]:
     """Return file name → text of a CSV file, in UTF-8 and with Unix line ends.
 
-    ``comparison.csv`` holds every effect under every belief, ``rho_grid.csv`` every effect at fixed
-    correlations, ``tipping.csv`` (where there is one) the correlation at which draws cross the limit, and
-    ``beliefs.csv`` what was believed. An infinite moment is written ``inf``.
+    An infinite moment is written ``inf``. Text that a spreadsheet would take for a formula stands behind an apostrophe.
     """
-    tables = {"comparison.csv": findings.comparison.table, "rho_grid.csv": findings.grid}
-    if findings.tipping is not None:
-        tables["tipping.csv"] = findings.tipping.table
-    tables["beliefs.csv"] = _beliefs(findings)
-    return {name: table.to_csv(index=False, float_format="%.8g", lineterminator="\n") for name, table in tables.items()}
+    return {f"{name}.csv": as_csv(harmless(table), float_format="%.8g") for name, table in tables(findings).items()}
+
+
+def latex_tables(findings: Findings) -> dict[str, str]:
+    """Return file name → text of a LaTeX table, numbers rounded as in the report."""
+    return {f"{name}.tex": latex_table(table, name) for name, table in tables(findings).items()}
+
+
+def as_csv(table: pd.DataFrame, float_format: str | None = None) -> str:
+    """Return a table as the text of a CSV file."""
+    return str(table.to_csv(index=False, float_format=float_format, lineterminator="\n"))
+
+
+def harmless(table: pd.DataFrame) -> pd.DataFrame:
+    """Return a table in which no text, nor the name of a column, would be taken for a formula by a spreadsheet."""
+    changed = {
+        _harmless(str(name)): column.map(_harmless) if column.dtype.kind not in "biuf" else column
+        for name, column in table.items()
+    }
+    return pd.DataFrame(changed, columns=list(changed))
+
+
+def _harmless(value: Any) -> Any:
+    return f"'{value}" if isinstance(value, str) and value.startswith(FORMULA_STARTS) else value
 
 
 def _beliefs(findings: Findings) -> pd.DataFrame:

@@ -1,0 +1,70 @@
+"""The pictures of a report: every maker stands in one list, and a new picture is one more entry."""
+
+import warnings
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any, Literal
+
+from bayesmed.core.errors import ExtrapolationWarning
+from bayesmed.report.findings import Findings
+
+if TYPE_CHECKING:
+    from bayesmed.plots.picture import Picture
+
+
+@dataclass(frozen=True)
+class Maker:
+    """How one picture of a report is made.
+
+    Attributes
+    ----------
+    name : str
+        Of its files, without ending.
+    section : {"answers", "overturning", "diagnostics"}
+        Where it stands.
+    caption : str
+    make : callable
+        Findings → Picture, or None where there is nothing to draw.
+    """
+
+    name: str
+    section: Literal["answers", "overturning", "diagnostics"]
+    caption: str
+    make: "Callable[[Findings], Picture | None]"
+
+
+def drawn(findings: Findings) -> "dict[str, Picture]":
+    """Return name → picture, of those that there are for these findings, in the order of the list."""
+    made = {}
+    with warnings.catch_warnings():
+        # That points lie outside the data was said when they were first used.
+        warnings.simplefilter("ignore", ExtrapolationWarning)
+        for maker in MAKERS:
+            picture = maker.make(findings)
+            if picture is not None:
+                made[maker.name] = picture
+    return made
+
+
+def _beliefs(findings: Findings) -> "Picture":
+    from bayesmed.plots import beliefs
+
+    return beliefs.plot_beliefs(findings.comparison)
+
+
+def _effect_by_rho(findings: Findings) -> "Picture":
+    from bayesmed.plots import effect_by_rho
+
+    comparison = findings.comparison
+    at: dict[str, Any] = {**{k: list(v) for k, v in comparison.points.dims.items()}, **comparison.points.scalars}
+    return effect_by_rho.plot_effect_by_rho(
+        findings.result, comparison.beliefs, at, comparison.claim, comparison.ci_prob
+    )
+
+
+MAKERS = (
+    Maker(
+        "claim_by_belief", "answers", "The claim under every belief, and how far it is from what it requires", _beliefs
+    ),
+    Maker("effect_by_rho", "overturning", "The effect at fixed rho, with the beliefs about rho", _effect_by_rho),
+)
