@@ -136,7 +136,7 @@ def beliefs_against_resampling(quick: bool) -> Iterator[Row]:
 
 def effective_draws_a_second(quick: bool) -> Iterator[Row]:
     """The indirect effect under rho uniform on ±.9, sampling only."""
-    for count, least, draws in ((240, 30, 1000), (200_000, 1000, 250)):
+    for count, least, draws in ((240, 30, 1000), (200_000, 1000, 60)):
         if quick and count > 1000:
             continue
         asked = study(count, moderated=False)
