@@ -11,6 +11,7 @@ from bayesmed.report.findings import Findings
 from bayesmed.report.method import made_with
 from bayesmed.report.opening import where
 from bayesmed.report.overturning import rho_text
+from bayesmed.report.tables import one_by_one
 
 
 def to_paste(findings: Findings) -> Iterator[Block]:
@@ -28,7 +29,7 @@ def methods(findings: Findings) -> Words:
     observed, settings, claim = result.observed, result.settings, comparison.claim
     x, m, y = observed.exposure, observed.mediator_name, observed.outcome_name
     low, high = observed.contrast
-    belief_list = listed(_belief(label, prior) for label, prior in comparison.beliefs.items())
+    belief_list = listed(_belief(label, prior) for label, prior in one_by_one(comparison.beliefs).items())
     version = made_with(findings)
     return (
         f"We estimated how much of the effect of {x} ({low} against {high}) on {y} runs through {m} with two Bayesian "
@@ -90,13 +91,13 @@ def results(findings: Findings) -> Words:
     effect = claim.effect.replace("_", " ")
     sentences = [
         f"Effects are means with {100 * comparison.ci_prob:g} % intervals, in units of "
-        f"{findings.result.observed.outcome_name}; p is the posterior probability of an effect "
+        f"{findings.result.observed.outcome_name}; Pr is the posterior probability of an effect "
         f"{claim.direction} {claim.limit:g}."
     ]
     for k, point in enumerate(comparison.points.values):
         rows = comparison.claimed.iloc[k::count]
         each = [
-            f"{number_text(row['mean'])} ({number_text(row['lower'])} to {number_text(row['upper'])}; p "
+            f"{number_text(row['mean'])} ({number_text(row['lower'])} to {number_text(row['upper'])}; Pr "
             f"{_equal(probability_text(row['probability'], row['mcse']))}: the claim "
             f"{'is ' if row['verdict'] == CLOSE else ''}{row['verdict']}) under “{row['prior']}”"
             for _, row in rows.iterrows()

@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, Literal
 
 from bayesmed.core.errors import ExtrapolationWarning
+from bayesmed.priors import ByGroup
 from bayesmed.report.findings import Findings
 
 if TYPE_CHECKING:
@@ -52,10 +53,12 @@ def _beliefs(findings: Findings) -> "Picture":
     return beliefs.plot_beliefs(findings.comparison)
 
 
-def _effect_by_rho(findings: Findings) -> "Picture":
+def _effect_by_rho(findings: Findings) -> "Picture | None":
     from bayesmed.plots import effect_by_rho
 
     comparison = findings.comparison
+    if any(isinstance(belief, ByGroup) for belief in comparison.beliefs.values()):
+        return None
     at: dict[str, Any] = {**{k: list(v) for k, v in comparison.points.dims.items()}, **comparison.points.scalars}
     return effect_by_rho.plot_effect_by_rho(
         findings.result, comparison.beliefs, at, comparison.claim, comparison.ci_prob

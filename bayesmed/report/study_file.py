@@ -97,10 +97,7 @@ class StudyFile:
         import pandas as pd
 
         try:
-            if self.data.suffix == ".parquet":
-                return pd.read_parquet(self.data)
-            # The usual reading may miss a number by its last bit.
-            return pd.read_csv(self.data, float_precision="round_trip")
+            return pd.read_parquet(self.data) if self.data.suffix == ".parquet" else pd.read_csv(self.data)
         except ImportError as error:
             raise StudyFileError(
                 f"{self.path.name}: data is {self.data.name}, and reading Parquet needs pyarrow; install it "

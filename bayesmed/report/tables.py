@@ -1,9 +1,11 @@
 """The tables that a report writes, as CSV for machines and spreadsheets and as LaTeX for papers."""
 
+from collections.abc import Mapping
 from typing import Any
 
 import pandas as pd
 
+from bayesmed.priors import ByGroup
 from bayesmed.report.findings import Findings
 from bayesmed.report.latex import latex_table
 
@@ -63,7 +65,7 @@ def _harmless(value: Any) -> Any:
 
 
 def _beliefs(findings: Findings) -> pd.DataFrame:
-    beliefs = findings.comparison.beliefs
+    beliefs = one_by_one(findings.comparison.beliefs)
     quantiles = {q: [float(b.ppf(q)) for b in beliefs.values()] for q in (0.05, 0.5, 0.95)}
     return pd.DataFrame(
         {
@@ -74,3 +76,14 @@ def _beliefs(findings: Findings) -> pd.DataFrame:
             "quantile_95": quantiles[0.95],
         }
     )
+
+
+def one_by_one(beliefs: Mapping[str, Any]) -> dict[str, Any]:
+    """Return label → belief, with a belief for each group taken apart into its groups'."""
+    apart: dict[str, Any] = {}
+    for label, belief in beliefs.items():
+        if isinstance(belief, ByGroup):
+            apart.update({f"{label}: {level}": prior for level, prior in belief.items})
+        else:
+            apart[label] = belief
+    return apart

@@ -25,7 +25,7 @@ def test_report_prints_the_comparison_and_writes_the_folder(quick: Write, tmp_pa
     assert max(map(len, out.splitlines())) <= 80
     flat = re.sub(r"\s+", "", out)
     table = pd.read_csv(tmp_path / "out" / "comparison.csv")
-    for label in table["prior"].unique():
+    for label in table["prior"].str.removeprefix("'").unique():
         # Long labels go over several lines of their column, and no character of them is lost.
         words = label.split()
         assert all(word in out for word in words if len(word) < 15), label
@@ -147,9 +147,8 @@ def test_version(capsys: Captured) -> None:
 def test_an_interrupt_leaves_nothing_and_is_code_130(
     quick: Write, tmp_path: Path, capsys: Captured, monkeypatch: pytest.MonkeyPatch, where: str
 ) -> None:
-    monkeypatch.setattr(
-        fitted_room if where != "write_findings" else room, where, lambda *_: signal.raise_signal(signal.SIGINT)
-    )
+    at = room if where == "write_findings" else fitted_room
+    monkeypatch.setattr(at, where, lambda *_, **__: signal.raise_signal(signal.SIGINT))
     path = quick()
     before = {each.name for each in tmp_path.iterdir()}
     assert main(["report", str(path), "--out", str(tmp_path / "out"), "--quiet"]) == 130
@@ -188,7 +187,7 @@ def test_exact_prints_its_table_without_sampler_or_plotting_library(quick: Write
     code = """
 import sys
 from bayesmed.cli import main, report
-def looked(found, folder):
+def looked(found, folder, **_):
     heavy = {"pymc", "pytensor", "nutpie", "arviz_stats", "arviz_base", "arviz_plots", "matplotlib", "numba"}
     print("imported:", sorted(heavy & set(sys.modules)))
     raise SystemExit(0)

@@ -1,10 +1,5 @@
-"""The summary page, the CSV tables, and how far the interval stays clear of the limit."""
+"""The report as Markdown, and how far the interval stays clear of the limit."""
 
-import io
-from collections.abc import Callable
-
-import numpy as np
-import pandas as pd
 import pytest
 from markdown_it import MarkdownIt
 
@@ -12,14 +7,18 @@ import bayesmed as bm
 from bayesmed.conclusions.summary import rho_grid
 from bayesmed.fit.result import FitResult
 from bayesmed.priors import panel
-from bayesmed.report.findings import find
+from bayesmed.report.document import document
+from bayesmed.report.findings import Findings, find
 from bayesmed.report.limits import Reach, reaches
-from bayesmed.report.summary import summary_page
-from bayesmed.report.tables import csv_tables
+from bayesmed.report.markdown import as_markdown
 from bayesmed.study.points import points
 
 AT = {"confidence": [4, 8]}
 BELIEFS = {"none": 0.0, '<b>bold</b>, "and" | bar': bm.Uniform(0, 0.5), "=SUM(A1)": bm.LKJ(2)}
+
+
+def summary_page(found: Findings) -> str:
+    return as_markdown(document(found, {}))
 
 
 def test_the_reach_is_where_the_grid_first_holds_the_limit(knee: FitResult) -> None:
@@ -84,7 +83,8 @@ def test_without_beliefs_the_documented_set_stands_in_behind_the_fits_own(knee: 
 def test_a_claim_about_the_total_effect_has_no_tipping(knee: FitResult) -> None:
     found = find(knee, BELIEFS, AT, bm.Claim("total"))
     assert found.tipping is None
-    assert "tipping.csv" not in csv_tables(found)
+    assert found.yardsticks is None
+    assert found.envelope is None
     assert "Averaged" not in summary_page(found)
 
 
@@ -93,23 +93,3 @@ def test_a_point_outside_the_data_is_warned_of_once_and_on_the_page(knee: FitRes
         found = find(knee, BELIEFS, {"confidence": [4, 12]})
     assert len(caught) == 1
     assert "lies outside the values observed" in summary_page(found)
-
-
-def test_csv_tables_read_back_as_they_were(knee: FitResult) -> None:
-    found = find(knee, BELIEFS, AT)
-    texts = csv_tables(found)
-    assert sorted(texts) == ["beliefs.csv", "comparison.csv", "rho_grid.csv", "tipping.csv"]
-    read: Callable[[str], pd.DataFrame] = lambda name: pd.read_csv(io.StringIO(texts[name]))  # noqa: E731
-    pd.testing.assert_frame_equal(
-        read("comparison.csv").fillna(""), found.comparison.table.fillna(""), check_dtype=False, rtol=1e-6
-    )
-    pd.testing.assert_frame_equal(read("rho_grid.csv"), found.grid, check_dtype=False, rtol=1e-6)
-    assert list(read("beliefs.csv")["prior"]) == list(BELIEFS)
-    assert read("beliefs.csv")["median"].iloc[1] == 0.25
-
-
-def test_an_infinite_sd_is_written_as_such(knee: FitResult) -> None:
-    """LKJ(1) is uniform on (-1, 1): the odds r have no finite variance."""
-    found = find(knee, {"flat": bm.LKJ(1)}, AT)
-    table = pd.read_csv(io.StringIO(csv_tables(found)["comparison.csv"]))
-    assert np.isinf(table.loc[table["effect"] == "indirect", "sd"]).all()

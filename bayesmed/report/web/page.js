@@ -27,7 +27,6 @@ function probabilityText(probability, error = 0) {
 
 function startPage() {
   followLinksInside();
-  window.addEventListener("beforeprint", () => document.querySelectorAll("details").forEach((each) => (each.open = true)));
   const stored = byId("stored-draws");
   if (stored) startLive(JSON.parse(stored.textContent));
 }
