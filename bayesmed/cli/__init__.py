@@ -1,4 +1,4 @@
-"""The command line: ``bayesmed report`` and ``bayesmed check``."""
+"""The command line: ``bayesmed report``, ``compare``, ``check`` and ``example``."""
 
 from bayesmed.cli.command import main
 

@@ -36,6 +36,21 @@ example:
 
 Each line is a finding; "!" marks what deserves attention, "✗" what stops the fit.
 """,
+    "compare": """\
+example:
+  bayesmed compare study.toml
+  bayesmed compare study.toml --json > comparison.json
+
+With --json one document goes to standard output: numbers unrounded, infinite ones as "inf" and
+"-inf", those that do not exist as null.
+""",
+    "example": """\
+example:
+  bayesmed example                                       (lists the examples)
+  bayesmed example knee_rehab --out knee_rehab
+
+DIR must be new or empty.
+""",
 }
 
 
@@ -74,14 +89,22 @@ def main(arguments: Sequence[str] | None = None) -> int:
 
 
 def _run(chosen: argparse.Namespace) -> int:
+    if chosen.command == "example":
+        from bayesmed.cli.example import example
+
+        return example(chosen.name, chosen.out)
     study = _study_path(chosen.study)
     if chosen.command == "check":
         from bayesmed.cli.check import check
 
-        return check(study)
+        return check(study, as_json=chosen.json)
+    if chosen.command == "compare":
+        from bayesmed.cli.compare import compare
+
+        return compare(study, as_json=chosen.json)
     from bayesmed.cli.report import report
 
-    return report(study, chosen.out, quiet=chosen.quiet, rows=not chosen.without_rows)
+    return report(study, chosen.out, quiet=chosen.quiet, as_json=chosen.json, rows=not chosen.without_rows)
 
 
 def _study_path(given: str) -> Path:
@@ -102,14 +125,16 @@ def _parser() -> argparse.ArgumentParser:
     parser = argparse.ArgumentParser(
         prog="bayesmed",
         description="Causal mediation in which unmeasured confounding is a belief: state it, compare, see what tips.",
-        epilog=f"{EXAMPLES['check']}\n{EXAMPLES['report']}\n{CODES}",
+        epilog="\n".join([*EXAMPLES.values(), CODES]),
         formatter_class=argparse.RawDescriptionHelpFormatter,
     )
     parser.add_argument("--version", action="version", version=f"bayesmed {version('bayesmed')}")
-    commands = parser.add_subparsers(dest="command", required=True, metavar="{report,check}")
+    commands = parser.add_subparsers(dest="command", required=True, metavar="{report,compare,check,example}")
     for name, summary in (
         ("report", "fit a study, print the comparison of beliefs, and write tables, picture and summary"),
+        ("compare", "fit a study and print the comparison of beliefs, writing nothing"),
         ("check", "read a study and its data and print the audit, without fitting"),
+        ("example", "write an invented study to start from"),
     ):
         command = commands.add_parser(
             name,
@@ -118,11 +143,16 @@ def _parser() -> argparse.ArgumentParser:
             epilog=f"{EXAMPLES[name]}\n{CODES}",
             formatter_class=argparse.RawDescriptionHelpFormatter,
         )
+        if name == "example":
+            command.add_argument("name", metavar="NAME", nargs="?", help="one of those listed when it is left out")
+            command.add_argument("--out", metavar="DIR", help="folder to write into")
+            continue
         command.add_argument("study", metavar="STUDY", help="study file (TOML), or the name of an example")
         if name == "report":
             command.add_argument("--out", metavar="FOLDER", required=True, help="folder to write into")
             command.add_argument("--without-rows", action="store_true", help="keep nothing of the participants' rows")
             command.add_argument("--quiet", action="store_true", help="print warnings and errors only")
+        command.add_argument("--json", action="store_true", help="print one JSON document, for machines")
     return parser
 
 

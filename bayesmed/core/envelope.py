@@ -106,5 +106,6 @@ def tilt(masses: Array, values: Array, divergence: float) -> Array:
         if high > LARGEST_LOG_RATE:
             return np.asarray(lowest / masses[lowest].sum())
     rate = np.exp(brentq(unused, low, high, xtol=1e-11))
-    factors = np.where(present, np.exp(-rate * excess), 0.0)
+    # Steps without mass may lie far below the lowest that has some.
+    factors = np.where(present, np.exp(-rate * np.where(present, excess, 0.0)), 0.0)
     return np.asarray(factors / (masses @ factors))

@@ -211,6 +211,7 @@ def _invert(gap: Callable[[Array, Array, Array], Array], start: Array, width: Ar
     bracket = elementwise.bracket_root(
         gap, start.ravel() - width.ravel(), start.ravel() + width.ravel(), args=(index, target), maxiter=200
     )
-    root = elementwise.find_root(gap, bracket.bracket, args=(index, target), tolerances={"xrtol": 1e-10, "fatol": 1e-11})
+    enough: Any = {"xrtol": 1e-10, "fatol": 1e-11}
+    root = elementwise.find_root(gap, bracket.bracket, args=(index, target), tolerances=enough)
     # With atoms the function may jump over zero: the point of the jump is the quantile.
     return np.asarray(np.where(root.success, root.x, start.ravel())).reshape(points, count)

@@ -10,6 +10,7 @@ from pathlib import Path
 import pandas as pd
 import pytest
 
+from bayesmed.cli import fitted as fitted_room
 from bayesmed.cli import main
 from bayesmed.cli import report as room
 from bayesmed.core.errors import StudyFileError
@@ -107,7 +108,7 @@ def test_what_is_wrong_is_one_message_and_code_1(
 def test_a_folder_that_is_refused_is_refused_before_the_fit(
     quick: Write, tmp_path: Path, capsys: Captured, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    monkeypatch.setattr(room, "_fit", lambda *_: pytest.fail("fitted"))
+    monkeypatch.setattr(room, "fitted", lambda *_: pytest.fail("fitted"))
     assert main(["report", str(quick()), "--out", str(tmp_path)]) == 1
     assert "was not written by bayesmed" in capsys.readouterr().err
 
@@ -126,7 +127,9 @@ def test_usage_errors_are_code_2(arguments: list[str], capsys: Captured) -> None
     assert "usage: bayesmed" in capsys.readouterr().err
 
 
-@pytest.mark.parametrize("arguments", [["--help"], ["report", "--help"], ["check", "--help"]])
+@pytest.mark.parametrize(
+    "arguments", [["--help"], *([name, "--help"] for name in ("report", "compare", "check", "example"))]
+)
 def test_help_has_examples_and_exit_codes(arguments: list[str], capsys: Captured) -> None:
     assert main(arguments) == 0
     out = capsys.readouterr().out
@@ -144,7 +147,8 @@ def test_version(capsys: Captured) -> None:
 def test_an_interrupt_leaves_nothing_and_is_code_130(
     quick: Write, tmp_path: Path, capsys: Captured, monkeypatch: pytest.MonkeyPatch, where: str
 ) -> None:
-    monkeypatch.setattr(room, where, lambda *_, **__: signal.raise_signal(signal.SIGINT))
+    at = room if where == "write_findings" else fitted_room
+    monkeypatch.setattr(at, where, lambda *_, **__: signal.raise_signal(signal.SIGINT))
     path = quick()
     before = {each.name for each in tmp_path.iterdir()}
     assert main(["report", str(path), "--out", str(tmp_path / "out"), "--quiet"]) == 130
@@ -162,7 +166,7 @@ def test_draws_of_an_interrupted_sampler_are_not_taken_for_whole(
 
     def cut_short(*arguments: object, **options: object) -> object:
         tree = sample(*arguments, **options)
-        tree["posterior"]["tau"][:, 50:] = float("nan")
+        tree["posterior"]["log_sigma"][:, 50:] = float("nan")
         return tree
 
     monkeypatch.setattr(nutpie, "sample", cut_short)

@@ -59,7 +59,7 @@ def test_density_and_gradient_are_those_of_the_studys_own_model(data, formulas, 
 
 
 def test_a_study_of_another_shape_compiles_nothing(data, monkeypatch):
-    quiet = {"draws": 300, "tune": 300, "random_seed": 1, "progressbar": False}
+    quiet = {"random_seed": 1, "progressbar": False}
     study = bm.Study(data, exposure="x", mediator="m ~ x", outcome="y ~ m + x")
     study.fit(**quiet)
 
@@ -74,5 +74,5 @@ def test_a_study_of_another_shape_compiles_nothing(data, monkeypatch):
     for name in ("alpha", "gamma"):
         spread = exact.posterior[name].std(("chain", "draw"))
         gap = fit.posterior[name].mean(("chain", "draw")) - exact.posterior[name].mean(("chain", "draw"))
-        # 1,200 draws that are nearly independent: a standard error of .03 SD, and the default prior's pull.
-        assert float(np.abs(gap / spread).max()) < 0.15
+        # 4,000 draws that are nearly independent: a standard error of .016 SD, and the default prior's pull.
+        assert float(np.abs(gap / spread).max()) < 0.1

@@ -1,0 +1,45 @@
+"""From a study file to everything there is to say of it: what ``report`` and ``compare`` have in common."""
+
+from collections.abc import Callable
+from functools import partial
+from pathlib import Path
+
+from bayesmed.core.errors import BeliefNeededError
+from bayesmed.fit.result import FitResult
+from bayesmed.front.study import Study
+from bayesmed.report.findings import Findings, find
+from bayesmed.report.study_file import StudyFile, read_study_file
+from bayesmed.study.points import points
+
+
+def fitted(path: Path, say: Callable[[str], None]) -> Findings:
+    """Read a study file, fit the study and work out the findings, saying what is being done."""
+    say("Reading the study and its data")
+    asked = read_study_file(path)
+    study = Study.of(asked.observe())
+    # What the conclusions would refuse is better said before a fit than after it.
+    points(study.observed, asked.at)
+    say("Sampling" if asked.fit.method == "nuts" else "Drawing from the exact posterior")
+    result = _fit(study, asked)
+    say("Comparing beliefs")
+    beliefs = asked.beliefs if asked.own_beliefs else None
+    return find(result, beliefs, asked.at, asked.claim, asked.ci_prob, asked.title)
+
+
+def _fit(study: Study, asked: StudyFile) -> FitResult:
+    """Fit without a belief, or, where rho is informed and the fit needs one, under the widest of those given."""
+    fit = partial(
+        study.fit,
+        method=asked.fit.method,
+        draws=asked.fit.draws,
+        tune=asked.fit.tune,
+        chains=asked.fit.chains,
+        random_seed=asked.fit.random_seed,
+        coefficients=asked.coefficients,
+        learn=asked.fit.learn,
+        progressbar=False,
+    )
+    try:
+        return fit().result
+    except BeliefNeededError:
+        return fit(max(asked.beliefs.values(), key=lambda belief: belief.rho_sd())).result
