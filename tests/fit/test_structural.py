@@ -216,8 +216,11 @@ def test_a_cut_fit_holds_rho_at_its_prior(wide):
     )
 
 
-def test_the_implied_prior_of_the_effect(case):
-    data, slope, spread = case[1]
+@pytest.mark.parametrize(
+    "name", ["110 rows", *(pytest.param(n, marks=pytest.mark.slow, id=f"{n} seed_1") for n in list(CASES)[1:])]
+)
+def test_the_implied_prior_of_the_effect(name):
+    data, slope, spread = CASES[name]
     priors = bm.Coefficients(
         mediator={"x": bm.Normal(5, 1)}, outcome={"m": slope}, sigma_outcome=spread, scale="structural"
     )
