@@ -3,6 +3,7 @@
 import hashlib
 from base64 import b64encode
 from collections.abc import Mapping
+from functools import cache
 from html import escape
 from importlib.metadata import version
 from importlib.resources import files
@@ -17,6 +18,8 @@ from bayesmed.report.live import as_script_data
 from bayesmed.report.pictures import drawn
 
 if TYPE_CHECKING:
+    from jinja2 import Template
+
     from bayesmed.plots.picture import Picture
 
 SCRIPTS = ("belief.js", "page.js")
@@ -74,28 +77,29 @@ def as_page(made: Document, images: Mapping[str, bytes]) -> str:
     images : dict of str to bytes
         SVG by the name of its figure.
     """
-    from jinja2 import Environment, StrictUndefined
-
-    environment = Environment(autoescape=True, undefined=StrictUndefined, keep_trailing_newline=True)
     script = "\n" + "\n".join(_shipped(name) for name in SCRIPTS)
     stored = [block.stored for section in made.sections for block in section.blocks if isinstance(block, Live)]
     live = stored[0] if stored else None
-    return (
-        environment.from_string(_shipped("page.html.j2"))
-        .render(
-            document=made,
-            images={
-                name: f"data:image/svg+xml;base64,{b64encode(data).decode('ascii')}" for name, data in images.items()
-            },
-            live=live,
-            stored=as_script_data(live) if live else "",
-            style=_shipped("page.css"),
-            script=script,
-            script_hash=f"sha256-{b64encode(hashlib.sha256(script.encode('utf-8')).digest()).decode('ascii')}",
-            version=version("bayesmed"),
-        )
-        .lstrip()
+    uris = {name: f"data:image/svg+xml;base64,{b64encode(data).decode('ascii')}" for name, data in images.items()}
+    page = _template().render(
+        document=made,
+        images=uris,
+        live=live,
+        stored=as_script_data(live) if live else "",
+        style=_shipped("page.css"),
+        script=script,
+        script_hash=f"sha256-{b64encode(hashlib.sha256(script.encode('utf-8')).digest()).decode('ascii')}",
+        version=version("bayesmed"),
     )
+    return page.lstrip()
+
+
+@cache
+def _template() -> "Template":
+    from jinja2 import Environment, StrictUndefined
+
+    environment = Environment(autoescape=True, undefined=StrictUndefined, keep_trailing_newline=True)
+    return environment.from_string(_shipped("page.html.j2"))
 
 
 def _shipped(name: str) -> str:

@@ -210,8 +210,8 @@ def test_the_page_may_not_reach_out_nor_run_what_is_put_in(browser: Browser, pag
 
 
 def test_every_control_has_a_role_and_a_name_of_its_own(browser: Browser, pages: dict[str, Path]) -> None:
-    for page in ("plain", "hostile"):
-        for family in ("normal", "quantiles", "causes"):
+    for page, families in (("plain", ("normal", "quantiles", "causes")), ("hostile", ("causes",))):
+        for family in families:
             browser.open(pages[page], f"#family={family}")
             nodes = browser.names()
             controls = [

@@ -15,6 +15,7 @@ from bayesmed.core.errors import ArgumentError
 from bayesmed.fit.result import FitResult
 from bayesmed.plots.picture import Picture
 from bayesmed.report import folder as room
+from bayesmed.report import keeping
 from bayesmed.report.findings import Findings, find
 from bayesmed.report.folder import MARKER, check_folder, write_findings, write_report
 
@@ -37,8 +38,10 @@ def found(knee: FitResult) -> dict[str, Findings]:
 
 @pytest.fixture
 def write(found: dict[str, Findings], monkeypatch: pytest.MonkeyPatch) -> Callable[..., Path]:
-    """Write a report whose picture is a small stand-in, for tests of the folder alone."""
+    """Write a report whose picture, fit and study file are small stand-ins, for tests of the folder alone."""
     stand_in = Picture(Figure(figsize=(0.1, 0.1)), "title", "text")
+    monkeypatch.setattr(keeping, "save", lambda _, path, **__: path.write_text("fit"))
+    monkeypatch.setattr(keeping, "study_request", lambda _: ("study", "rows", ""))
     monkeypatch.setattr(room, "drawn", lambda _: {"effect_by_rho": stand_in})
     return lambda folder, effect="indirect": write_findings(found[effect], folder)
 
