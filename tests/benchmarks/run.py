@@ -161,7 +161,8 @@ def effective_draws_a_second(quick: bool) -> Iterator[Row]:
             product = posterior["alpha"].to_numpy()[..., place_x] * posterior["beta"].to_numpy()[..., place_m]
             rates[1].append(float(array_stats.ess(product, chain_axis=0, draw_axis=1)) / took)
         mine, theirs = (float(np.median(r)) for r in rates)
-        what = f"effective draws a second of the indirect effect, free ρ, {count:,} rows"
+        beside = "" if draws == 1000 else f" (the rival with {draws} draws a chain after as many to adapt)"
+        what = f"effective draws a second of the indirect effect, free ρ, {count:,} rows{beside}"
         yield Row(
             what, f"{mine:,.0f}", f"{theirs:,.2f}", f"{mine / theirs:,.0f} ×", f"≥ {least:,} ×", mine / theirs >= least
         )
@@ -250,7 +251,7 @@ nutpie.sample(nutpie.compile_pymc_model(model), draws=1000, tune=1000, chains=4,
 import sys
 import bayesmed.cli.report as room
 from bayesmed.cli import main
-def stop(found, folder):
+def stop(found, folder, **options):
     raise SystemExit(0)
 room.write_findings = stop
 main(["report", sys.argv[1], "--out", sys.argv[2]])
