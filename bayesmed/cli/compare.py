@@ -4,7 +4,7 @@ from pathlib import Path
 
 from bayesmed.cli.fitted import fitted
 from bayesmed.cli.json_text import compared, print_json
-from bayesmed.cli.printed import print_attention, print_comparison, print_words, screen, steps
+from bayesmed.cli.printed import print_answer, screen, steps
 
 
 def compare(path: Path, *, as_json: bool) -> int:
@@ -14,9 +14,5 @@ def compare(path: Path, *, as_json: bool) -> int:
     if as_json:
         print_json("compare", compared(found.comparison))
         return 0
-    console = screen()
-    print_attention(console, found.audit)
-    print_comparison(console, found.comparison)
-    for sentence in found.comparison.shifts:
-        print_words(console, sentence)
+    print_answer(screen(), found.audit, found.comparison)
     return 0

@@ -50,6 +50,14 @@ def steps(*, quiet: bool) -> Iterator[Callable[[str], None]]:
         _finish(progress)
 
 
+def print_answer(console: "Console", audit: Audit, comparison: ComparisonResult) -> None:
+    """Print what deserves attention, the comparison of beliefs, and which belief changes what."""
+    print_attention(console, audit)
+    print_comparison(console, comparison)
+    for sentence in comparison.shifts:
+        print_words(console, sentence)
+
+
 def print_comparison(console: "Console", comparison: ComparisonResult) -> None:
     """Print the claim's effect under every belief, one table a moderator point."""
     from rich.table import Table

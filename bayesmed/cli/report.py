@@ -4,7 +4,7 @@ from pathlib import Path
 
 from bayesmed.cli.fitted import fitted
 from bayesmed.cli.json_text import compared, print_json
-from bayesmed.cli.printed import print_attention, print_comparison, print_words, screen, steps
+from bayesmed.cli.printed import print_answer, print_words, screen, steps
 from bayesmed.report.folder import check_folder, write_findings
 
 
@@ -16,10 +16,7 @@ def report(path: Path, folder: str, *, quiet: bool, as_json: bool = False, rows:
         found = fitted(path, say)
     if not quiet:
         console = screen()
-        print_attention(console, found.audit)
-        print_comparison(console, found.comparison)
-        for sentence in found.comparison.shifts:
-            print_words(console, sentence)
+        print_answer(console, found.audit, found.comparison)
     with steps(quiet=quiet) as say:
         say("Drawing the picture and writing the folder")
         written = write_findings(found, folder, rows=rows)

@@ -39,8 +39,16 @@ def mean_with_error(values: Array, result: FitResult, weights: Array | None = No
     spread is zero, yet the probability is only known to be within about one effective draw, which is then the error.
     """
     mean = np.average(values, axis=1, weights=weights)
-    scaled = values if weights is None else (values - mean[:, None]) * weights * len(weights)
+    scaled = influence(values, mean, weights)
     ess = effective_draws(scaled, result)
     error = scaled.std(axis=1) / np.sqrt(ess)
     unanimous = values.max(axis=1) == values.min(axis=1)
     return mean, np.where(unanimous, 1 / ess, error)
+
+
+def influence(values: Array, mean: Array, weights: Array | None) -> Array:
+    """Return what each draw adds to an average, shape (row, draw): its spread over sqrt(draws) is the average's.
+
+    With importance weights, by linearisation of the ratio they form.
+    """
+    return values if weights is None else (values - mean[:, None]) * weights * len(weights)

@@ -76,7 +76,7 @@ def breaking_point(
         raise ArgumentError("claim: the total effect does not depend on rho, so no belief overturns it")
     rows = [_break(lines, k, lambda size: as_set(sets(size)), float(largest)) for k in range(len(lines.steps))]
     found = pd.DataFrame(rows, columns=["size", "size_mcse", "probability", "mcse"])
-    return pd.DataFrame({**lines.columns(), **found})
+    return pd.DataFrame({**lines.points.columns, **found})
 
 
 def _break(

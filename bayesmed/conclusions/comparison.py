@@ -30,8 +30,6 @@ class ComparisonResult:
     beliefs : dict of str to prior
     claim : Claim
     points : Points
-    routes : dict of str to str
-        How each belief was brought to draws in which rho is informed; empty where one set of draws serves all.
     views : dict of str to View
         The fit as seen under each belief.
     """
@@ -42,8 +40,12 @@ class ComparisonResult:
     claim: Claim
     points: Points
     ci_prob: float
-    routes: dict[str, str]
     views: dict[str, View]
+
+    @property
+    def routes(self) -> dict[str, str]:
+        """How each belief was brought to draws in which rho is informed; empty where one set of draws serves all."""
+        return {label: seen.route for label, seen in self.views.items() if seen.route}
 
     @cached_property
     def rho(self) -> pd.DataFrame:
@@ -86,11 +88,9 @@ def compare(
             raise ArgumentError(f"compare: label {label!r} must be text that is not blank")
     accepted = {label: as_belief(prior) for label, prior in beliefs.items()}
     chosen, stated, width = points(result.observed, at), as_claim(claim), checked_width(ci_prob)
-    routes, views = {}, {}
+    views = {}
     for label, belief in accepted.items():
         seen = views[label] = view(result, chosen, belief)
-        if seen.route:
-            routes[label] = seen.route
         if stated.effect not in effect_names(seen.contrasts):
             raise ArgumentError(
                 f"claim: the {stated.effect!r} effect equals the "
@@ -101,7 +101,7 @@ def compare(
     joined.insert(0, "prior", np.repeat(np.array(list(views), dtype=object), len(joined) // len(views)))
     judged = zip(joined["effect"], joined["probability"], joined["mcse"], strict=True)
     joined["verdict"] = [stated.verdict(p, e) if effect == stated.effect else "" for effect, p, e in judged]
-    return ComparisonResult(result, joined, accepted, stated, chosen, width, routes, views)
+    return ComparisonResult(result, joined, accepted, stated, chosen, width, views)
 
 
 def _moved(label: str, belief: Any, seen: View) -> Iterator[dict[str, Any]]:

@@ -49,10 +49,6 @@ class ClaimLines:
             self.constant[point], self.slope[point], self.claim.limit, self.claim.direction, belief
         )
 
-    def columns(self) -> dict[str, Any]:
-        """Return the moderator columns with which every table starts."""
-        return dict(self.points.columns)
-
 
 def claim_lines(result: FitResult, at: Any, claim: Claim | None, asker: str) -> ClaimLines:
     """Return the lines of a claim; an error of `asker` where the draws do not serve every rho."""
@@ -109,7 +105,7 @@ def envelope(result: FitResult, set_of_priors: Any, at: Any = None, claim: Claim
     """
     members = as_set(set_of_priors)
     lines = claim_lines(result, at, claim, "envelope")
-    columns = lines.columns()
+    columns: dict[str, Any] = dict(lines.points.columns)
     for name, find in (("lower", members.lowest), ("upper", members.highest)):
         found = [lines.by_draw(k, find(steps)) for k, steps in enumerate(lines.steps)]
         columns[name], columns[f"{name}_mcse"] = mean_with_error(np.stack(found), result)
@@ -119,7 +115,7 @@ def envelope(result: FitResult, set_of_priors: Any, at: Any = None, claim: Claim
     )
     columns["all_rho"], columns["all_rho_mcse"] = mean_with_error(throughout, result)
     order = ("lower", "upper", "lower_mcse", "upper_mcse", "mean_lower", "mean_upper", "all_rho", "all_rho_mcse")
-    return pd.DataFrame(columns)[[*lines.columns(), *order]]
+    return pd.DataFrame(columns)[[*lines.points.columns, *order]]
 
 
 def worst_case(result: FitResult, set_of_priors: Any, at: Any = None, claim: Claim | None = None) -> pd.DataFrame:
@@ -140,7 +136,7 @@ def worst_case(result: FitResult, set_of_priors: Any, at: Any = None, claim: Cla
     lines = claim_lines(result, at, claim, "worst_case")
     found = [members.lowest(steps) for steps in lines.steps]
     probability, mcse = mean_with_error(np.stack([lines.by_draw(k, p) for k, p in enumerate(found)]), result)
-    table = pd.DataFrame(lines.columns(), index=range(len(found)))
+    table = pd.DataFrame(lines.points.columns, index=range(len(found)))
     table["prior"] = pd.Series(found, dtype=object)
     return table.assign(probability=probability, mcse=mcse)
 

@@ -97,7 +97,8 @@ def fit_groups(
     _check_saturated(observed, moderator, chosen)
     parts = {}
     for number, level in enumerate(levels):
-        reduced, (v, w) = _reduced(observed, masks[level], chosen[level], level)
+        v, w = chosen[level]
+        reduced = _reduced(observed, designs, masks[level], chosen[level], level)
         names = [observed.mediator_terms[k] for k in v], [observed.outcome_terms[k] for k in w]
         own = Settings(settings.method, settings.draws, settings.tune, settings.chains, settings.random_seed + number)
         posterior = sample(reduced, tuple(names[0]), tuple(names[1]), own)["posterior"].to_dataset()
@@ -178,9 +179,9 @@ def _check_saturated(observed: Observed, moderator: str, chosen: Mapping[Any, tu
 
 
 def _reduced(
-    observed: Observed, mask: Array, columns: tuple[list[int], list[int]], level: Any
-) -> tuple[Statistics, tuple[list[int], list[int]]]:
-    v, w = observed.mediator_design[mask][:, columns[0]], observed.outcome_design[mask][:, columns[1]]
+    observed: Observed, designs: tuple[Array, Array], mask: Array, columns: tuple[list[int], list[int]], level: Any
+) -> Statistics:
+    v, w = designs[0][mask][:, columns[0]], designs[1][mask][:, columns[1]]
     mediator, outcome = reduce_rows(v, observed.mediator[mask]), reduce_rows(w, observed.outcome[mask])
     for equation, regression in (("mediator", mediator), ("outcome", outcome)):
         if regression.degrees_of_freedom < 3:
@@ -194,7 +195,7 @@ def _reduced(
             f"rho: within group {level!r} the data inform rho, since the outcome equation does not hold every term of "
             "the mediator equation; ByGroup needs formulas in which they are silent"
         )
-    return Statistics(mediator, outcome, outcome, (), False, alignment), columns
+    return Statistics(mediator, outcome, outcome, (), False, alignment)
 
 
 def _in_place(posterior: xr.Dataset, observed: Observed, v: list[int], w: list[int]) -> xr.Dataset:

@@ -1,6 +1,7 @@
 """The manifest: what made a report, so that it can be made again and checked."""
 
 import json
+from dataclasses import asdict
 from importlib.metadata import version
 from typing import Any
 
@@ -24,14 +25,7 @@ def manifest(findings: Findings, keeping: Keeping) -> dict[str, Any]:
         "layout": LAYOUT,
         "title": findings.title,
         "versions_of_the_fit": json.loads(versions) if isinstance(versions, str) else {},
-        "fit": {
-            "method": settings.method,
-            "draws": settings.draws,
-            "tune": settings.tune,
-            "chains": settings.chains,
-            "random_seed": settings.random_seed,
-            "learn": settings.learn,
-        },
+        "fit": asdict(settings),
         "exposure": observed.exposure,
         "contrast": [str(value) for value in observed.contrast],
         "mediator": observed.mediator_formula,

@@ -1,6 +1,7 @@
 """A study file written from findings: what `bayesmed report` needs to make the same numbers again."""
 
 import warnings
+from dataclasses import asdict
 from pathlib import Path
 from tempfile import TemporaryDirectory
 from typing import Any
@@ -92,14 +93,7 @@ def _written(findings: Findings) -> str:
             **{name: [_plain(value) for value in values] for name, values in points.dims.items()},
             **{name: _plain(value) for name, value in points.scalars.items()},
         },
-        "fit": {
-            "method": settings.method,
-            "draws": settings.draws,
-            "tune": settings.tune,
-            "chains": settings.chains,
-            "random_seed": settings.random_seed,
-            "learn": settings.learn,
-        },
+        "fit": asdict(settings),
     }
     if result.coefficients != Coefficients():
         content["coefficients"] = _coefficients(result.coefficients)
