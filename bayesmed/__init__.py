@@ -4,7 +4,6 @@ Public names are loaded on first use, so that ``import bayesmed`` costs next to 
 """
 
 from importlib import import_module
-from importlib.metadata import version as _version
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
@@ -150,7 +149,9 @@ def __getattr__(name: str) -> Any:
     elif name in _MODULES:
         value = import_module(_MODULES[name])
     elif name == "__version__":
-        value = _version("bayesmed")
+        from importlib.metadata import version
+
+        value = version("bayesmed")
     else:
         raise AttributeError(f"module 'bayesmed' has no attribute {name!r}")
     globals()[name] = value

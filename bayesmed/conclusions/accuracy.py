@@ -41,7 +41,8 @@ def mean_with_error(values: Array, result: FitResult, weights: Array | None = No
     mean = np.average(values, axis=1, weights=weights)
     scaled = influence(values, mean, weights)
     ess = effective_draws(scaled, result)
-    error = scaled.std(axis=1) / np.sqrt(ess)
+    centred = scaled - scaled.mean(axis=1, keepdims=True)
+    error = np.sqrt(np.einsum("ij,ij->i", centred, centred) / values.shape[1] / ess)
     unanimous = values.max(axis=1) == values.min(axis=1)
     return mean, np.where(unanimous, 1 / ess, error)
 

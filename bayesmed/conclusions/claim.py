@@ -7,6 +7,7 @@ import numpy as np
 
 from bayesmed.core.contrasts import EFFECTS
 from bayesmed.core.errors import ArgumentError
+from bayesmed.core.mapping import Array
 from bayesmed.core.tipping import Direction
 
 HOLDS, FAILS, CLOSE = "holds", "fails", "too close to call"
@@ -68,6 +69,10 @@ class Claim:
     def direction(self) -> Direction:
         """On which side of the limit the claim puts the effect."""
         return "above" if self.above is not None else "below"
+
+    def true_of(self, values: Array) -> Array:
+        """Return 1 where an effect of this value makes the claim true and 0 where it does not."""
+        return (values > self.limit if self.direction == "above" else values < self.limit).astype(float)
 
     def verdict(self, probability: float, mcse: float) -> str:
         """Return whether the claim holds, fails, or is within two Monte Carlo errors of what it requires."""

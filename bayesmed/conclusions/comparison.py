@@ -10,7 +10,7 @@ import pandas as pd
 
 from bayesmed.conclusions.claim import CLOSE, HOLDS, Claim, as_claim
 from bayesmed.conclusions.summary import checked_width, stacked
-from bayesmed.conclusions.view import View, effect_names, view
+from bayesmed.conclusions.view import View, view
 from bayesmed.conclusions.words import listed, point_text, probability_text
 from bayesmed.core.errors import ArgumentError
 from bayesmed.fit.result import FitResult
@@ -91,7 +91,7 @@ def compare(
     views = {}
     for label, belief in accepted.items():
         seen = views[label] = view(result, chosen, belief)
-        if stated.effect not in effect_names(seen.contrasts):
+        if stated.effect not in seen.contrasts.effects:
             raise ArgumentError(
                 f"claim: the {stated.effect!r} effect equals the "
                 f"{'indirect' if 'indirect' in stated.effect else 'direct'!r} effect here, since the outcome "

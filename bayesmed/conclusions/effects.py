@@ -6,7 +6,7 @@ import pandas as pd
 import xarray as xr
 
 from bayesmed.conclusions.labelled import labelled
-from bayesmed.conclusions.view import beliefs_along_rho, effect_names, view_by_draw
+from bayesmed.conclusions.view import beliefs_along_rho, view_by_draw
 from bayesmed.fit.result import FitResult
 from bayesmed.study.points import Points, points
 
@@ -37,5 +37,5 @@ def effects(result: FitResult, at: Any = None, rho: Any = None) -> xr.Dataset:
 
 def _one(result: FitResult, chosen: Points, rho: Any) -> xr.Dataset:
     seen = view_by_draw(result, chosen, rho)
-    names = effect_names(seen.contrasts)
+    names = seen.contrasts.effects
     return xr.Dataset({name: labelled(seen.draws(name), chosen, result.shape) for name in names})

@@ -6,7 +6,7 @@ import numpy as np
 import pandas as pd
 
 from bayesmed.conclusions.claim import Claim, as_claim
-from bayesmed.conclusions.view import View, beliefs_along_rho, effect_names, view
+from bayesmed.conclusions.view import View, beliefs_along_rho, view
 from bayesmed.core.errors import ArgumentError
 from bayesmed.fit.result import FitResult
 from bayesmed.study.points import Points, points
@@ -45,12 +45,19 @@ def table(seen: View, chosen: Points, claim: Claim, ci_prob: float) -> pd.DataFr
 def stacked(views: list[View], chosen: Points, claim: Claim, ci_prob: float) -> pd.DataFrame:
     """Return the long tables of several views under each other: by view, effect and moderator point."""
     tail = (1 - ci_prob) / 2
-    names = [effect_names(seen.contrasts) for seen in views]
+    names = [seen.contrasts.effects for seen in views]
     found = []
+    settled: dict[tuple[int, str], list[Any]] = {}
     for seen, effects in zip(views, names, strict=True):
         for effect in effects:
-            interval = seen.quantiles(effect, np.array([tail, 1 - tail]))
-            found.append([*seen.moments(effect), *interval.T, *seen.probability(effect, claim)])
+            # An effect on which rho has no bearing is the same under every belief.
+            key = None if seen.depends_on_rho(effect) else (id(seen.contrasts), effect)
+            statistics = settled.get(key) if key else None
+            if statistics is None:
+                statistics = seen.statistics(effect, claim, np.array([tail, 1 - tail]))
+            if key:
+                settled[key] = statistics
+            found.append(statistics)
     blocks = sum(map(len, names))
     columns: dict[str, Any] = {"effect": np.repeat(np.concatenate(names).astype(object), len(chosen.values))}
     columns.update({name: values * blocks for name, values in chosen.columns.items()})

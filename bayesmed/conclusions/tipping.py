@@ -106,9 +106,7 @@ class TippingResult:
                 return float(max(lower - self.claim.limit, self.claim.limit - upper))
 
             def spare(rho: float, constant: Array = constant, slope: Array = slope) -> float:
-                values = constant - slope * odds(rho)
-                true = values > self.claim.limit if self.claim.direction == "above" else values < self.claim.limit
-                return float(true.mean() - self.claim.required)
+                return float(self.claim.true_of(constant - slope * odds(rho)).mean() - self.claim.required)
 
             found[:, place] = [_first(f, sign) for f in (outside, spare) for sign in (-1, 1)]
         return dict(zip(("interval_down", "interval_up", "required_down", "required_up"), found, strict=True))

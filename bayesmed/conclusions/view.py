@@ -11,7 +11,8 @@ from bayesmed.conclusions.claim import Claim
 from bayesmed.core.contrasts import Contrasts
 from bayesmed.core.errors import ArgumentError, BeliefNeededError
 from bayesmed.core.mapping import Array
-from bayesmed.core.tipping import claim_probability, effect_moments, effect_quantiles
+from bayesmed.core.quantiles import effect_quantiles, ordered_quantiles
+from bayesmed.core.tipping import claim_probability
 from bayesmed.fit.grouped import GroupedResult, chosen_points
 from bayesmed.fit.make import refit
 from bayesmed.fit.result import FitResult
@@ -46,13 +47,26 @@ class View:
     weights: Array | None = None
     route: str = ""
 
+    @property
+    def integrates(self) -> bool:
+        """True if the belief is integrated out rather than drawn from."""
+        return self.rho is None and not is_fixed(self.belief)
+
     def draws(self, effect: str) -> Array:
         """Return draws of an effect, shape (point, draw), one correlation per draw."""
-        rho = self.rho
-        if rho is None:
-            own = self.belief is self.result.belief and "rho" in self.result.tree["posterior"]
-            rho = self.result.flat("rho") if own else np.asarray(self.belief.ppf(self.result.uniforms))
-        return self.contrasts.effect(effect, rho)
+        return self.contrasts.effect(effect, self._rho())
+
+    def statistics(self, effect: str, claim: Claim, levels: Array) -> list[Array]:
+        """Return mean, SD, quantiles, probability of the claim and its Monte Carlo error, each of shape (point,)."""
+        if self.integrates:
+            return [*self.moments(effect), *self.quantiles(effect, levels).T, *self.probability(effect, claim)]
+        draws = self.draws(effect)
+        probability = mean_with_error(claim.true_of(draws), self.result, self.weights)
+        return [*self.moments(effect), *self._quantiles_of(draws, levels).T, *probability]
+
+    def depends_on_rho(self, effect: str) -> bool:
+        """False if an effect's draws are the same whatever is believed about rho."""
+        return self.weights is not None or bool(np.any(self.contrasts.moments(effect).signs != 0))
 
     def probability(self, effect: str, claim: Claim) -> tuple[Array, Array]:
         """Return the probability that an effect is beyond the claim's limit, and its Monte Carlo error.
@@ -63,12 +77,10 @@ class View:
 
     def probability_by_draw(self, effect: str, claim: Claim) -> Array:
         """Return, per point and draw, the belief's probability that the claim's statement is true."""
-        if self.rho is None and not is_fixed(self.belief):
+        if self.integrates:
             constant, slope = self.contrasts.line(effect)
             return claim_probability(constant, slope, claim.limit, claim.direction, self.belief)
-        values = self.draws(effect)
-        true = values > claim.limit if claim.direction == "above" else values < claim.limit
-        return true.astype(float)
+        return claim.true_of(self.draws(effect))
 
     @property
     def draws_of(self) -> FitResult:
@@ -86,21 +98,31 @@ class View:
     def moments(self, effect: str) -> tuple[Array, Array]:
         """Return posterior mean and SD, each of shape (point,); infinite where they are."""
         if self.rho is None:
-            return effect_moments(*self.contrasts.line(effect), self.belief)
+            return self.contrasts.moments(effect).under(self.belief)
         values = self.draws(effect)
         mean = np.average(values, axis=1, weights=self.weights)
         return mean, np.sqrt(np.average((values - mean[:, None]) ** 2, axis=1, weights=self.weights))
 
     def quantiles(self, effect: str, probabilities: Array) -> Array:
         """Return posterior quantiles, shape (point, quantile)."""
-        constant, slope = self.contrasts.line(effect)
-        if self.weights is not None:
-            draws = self.draws(effect)
-            rows = [np.quantile(d, probabilities, weights=self.weights, method="inverted_cdf") for d in draws]
-            return np.stack(rows)
-        if self.rho is not None or not np.any(slope) or is_fixed(self.belief):
-            return np.quantile(self.draws(effect), probabilities, axis=1).T
-        return effect_quantiles(constant, slope, self.belief, probabilities, self.result.uniforms)
+        if self.integrates and self.depends_on_rho(effect):
+            return effect_quantiles(*self.contrasts.line(effect), self.belief, probabilities, self.result.uniforms)
+        return self._quantiles_of(self.draws(effect), probabilities)
+
+    def _rho(self) -> Array | float:
+        if self.rho is not None:
+            return self.rho
+        if is_fixed(self.belief):
+            return float(self.belief.atoms()[0][0])
+        if self.belief is self.result.belief and "rho" in self.result.tree["posterior"]:
+            return self.result.flat("rho")
+        return np.asarray(self.belief.ppf(self.result.uniforms))
+
+    def _quantiles_of(self, draws: Array, probabilities: Array) -> Array:
+        if self.weights is None:
+            return ordered_quantiles(np.sort(draws, axis=1), probabilities)
+        rows = [np.quantile(d, probabilities, weights=self.weights, method="inverted_cdf") for d in draws]
+        return np.stack(rows)
 
 
 def view(result: FitResult, points: Points, rho: Any = None) -> View:
@@ -160,6 +182,11 @@ class GroupedView(View):
     """
 
     pieces: tuple[tuple[list[int], View], ...] = ()
+
+    @property
+    def integrates(self) -> bool:
+        """True: every group's view sees to that."""
+        return True
 
     def draws(self, effect: str) -> Array:
         """Return draws of an effect, shape (point, draw); between groups they are tied as the belief says."""
@@ -242,11 +269,3 @@ def is_fixed(belief: Any) -> bool:
     """True if the belief is a single value of rho."""
     atoms = belief.atoms()
     return len(atoms) == 1 and float(atoms[0][1]) == 1.0
-
-
-def effect_names(contrasts: Contrasts) -> tuple[str, ...]:
-    """Return the effects to show: five where exposure and mediator interact, otherwise three."""
-    scale = np.abs(contrasts.a).max(initial=0.0)
-    if np.allclose(contrasts.a, contrasts.a_pure, rtol=1e-9, atol=1e-9 * scale):
-        return ("indirect", "direct", "total")
-    return ("indirect", "direct", "total", "pure_indirect", "total_direct")

@@ -12,10 +12,12 @@ of averages.
 """
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, field
+from functools import cached_property
 
 import numpy as np
 
+from bayesmed.core.line_moments import LineMoments, line_moments
 from bayesmed.core.mapping import Array, odds
 
 EFFECTS = ("indirect", "direct", "total", "pure_indirect", "total_direct")
@@ -71,6 +73,15 @@ class Contrasts:
     b: Array
     t: Array
     kappa: Array
+    _kept: dict[str, tuple[Array, Array]] = field(default_factory=dict, init=False, repr=False, compare=False)
+    _moments: dict[str, LineMoments] = field(default_factory=dict, init=False, repr=False, compare=False)
+
+    @cached_property
+    def effects(self) -> tuple[str, ...]:
+        """The effects to show: all five where exposure and mediator interact, otherwise the first three."""
+        scale = np.abs(self.a).max(initial=0.0)
+        same = np.allclose(self.a, self.a_pure, rtol=1e-9, atol=1e-9 * scale)
+        return EFFECTS[:3] if same else EFFECTS
 
     def effect(self, name: str, rho: Array | float) -> Array:
         """Return draws of one effect at `rho`.
@@ -89,7 +100,18 @@ class Contrasts:
         return np.asarray(constant - slope * odds(np.asarray(rho, dtype=float)))
 
     def line(self, name: str) -> tuple[Array, Array]:
-        """Return ``(c, k)``, each of shape (point, draw), such that the effect is ``c - k r``."""
+        """Return ``(c, k)``, each of shape (point, draw), with an effect of ``c - k r``; kept for the next call."""
+        if name not in self._kept:
+            self._kept[name] = self._line(name)
+        return self._kept[name]
+
+    def moments(self, name: str) -> LineMoments:
+        """Return the moments of an effect's line over draws; kept for the next call."""
+        if name not in self._moments:
+            self._moments[name] = line_moments(*self.line(name))
+        return self._moments[name]
+
+    def _line(self, name: str) -> tuple[Array, Array]:
         bias = self.kappa * self.b
         match name:
             case "indirect":

@@ -1,16 +1,17 @@
 """From an observed study to a fit, and from a fit to one under another belief."""
 
 import secrets
+import warnings
 from typing import Any, Literal
 
 import numpy as np
 import xarray as xr
 
-from bayesmed.core.errors import ArgumentError, BeliefNeededError, FitError
+from bayesmed.core.errors import ArgumentError, BeliefNeededError, DataWarning, FitError, InformedWarning
 from bayesmed.fit.cut import cut_draws
 from bayesmed.fit.diagnose import warn_if_wrong
 from bayesmed.fit.grouped import fit_groups
-from bayesmed.fit.informants import informants
+from bayesmed.fit.informants import informants, informed_message
 from bayesmed.fit.model import build_model
 from bayesmed.fit.movable import MovableBelief, belief_data, movable
 from bayesmed.fit.record import describe
@@ -46,7 +47,39 @@ def fit_study(
         If an argument has a value that is not allowed, or ``exact`` is asked where it does not apply.
     BeliefNeededError
         If rho is informed and no belief is given.
+
+    Warns
+    -----
+    InformedWarning
+        If the formulas leave out terms that inform rho.
+    DataWarning
+        If a column looks like an identifier and repeats.
     """
+    result = _fitted(observed, rho, method, draws, tune, chains, random_seed, coefficients, learn, progressbar)
+    if result.statistics.informed and learn:
+        message = informed_message(observed, result.statistics, result.coefficients)
+        warnings.warn(InformedWarning(message), stacklevel=3)
+    for identifier in observed.identifiers:
+        message = (
+            f"column {identifier.name!r} looks like an identifier and repeats (a value in up to {identifier.most} "
+            "rows); rows are taken as independent, and intervals are too narrow if they are not"
+        )
+        warnings.warn(DataWarning(message), stacklevel=3)
+    return result
+
+
+def _fitted(
+    observed: Observed,
+    rho: Any,
+    method: Method,
+    draws: int,
+    tune: int,
+    chains: int,
+    random_seed: int | None,
+    coefficients: Coefficients | None,
+    learn: bool,
+    progressbar: bool,
+) -> FitResult:
     _check_counts(draws=(draws, 4), tune=(tune, 0), chains=(chains, 1))
     if method not in ("nuts", "exact"):
         raise ArgumentError(f"method={method!r} is not known; allowed are 'nuts' and 'exact'")

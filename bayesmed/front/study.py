@@ -3,7 +3,6 @@
 from collections.abc import Callable, Mapping, Sequence
 from typing import TYPE_CHECKING, Any, Literal
 
-from bayesmed.core.errors import DataWarning, InformedWarning
 from bayesmed.study.audit import Audit, audit
 from bayesmed.study.observe import Observed, observe
 
@@ -318,9 +317,6 @@ class Study:
         SamplingWarning
             If a diagnostic is outside its bound.
         """
-        import warnings
-
-        from bayesmed.fit.informants import informed_message
         from bayesmed.fit.make import fit_study
         from bayesmed.front.fit import Fit
         from bayesmed.priors import as_belief
@@ -337,15 +333,6 @@ class Study:
             learn=learn,
             progressbar=progressbar,
         )
-        if result.statistics.informed and learn:
-            message = informed_message(result.observed, result.statistics, result.coefficients)
-            warnings.warn(InformedWarning(message), stacklevel=2)
-        for identifier in result.observed.identifiers:
-            message = (
-                f"column {identifier.name!r} looks like an identifier and repeats (a value in up to {identifier.most} "
-                "rows); rows are taken as independent, and intervals are too narrow if they are not"
-            )
-            warnings.warn(DataWarning(message), stacklevel=2)
         fit = Fit(result)
         if progressbar:
             print(fit.how)

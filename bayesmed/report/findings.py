@@ -1,29 +1,59 @@
-"""Everything a report says, worked out once from a fit: audit, comparison, fixed rho, tipping, yardsticks."""
+"""Everything a report says, worked out once from a fit: first the answer, then what may overturn it."""
 
 import dataclasses
 import warnings
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
+from contextlib import contextmanager
 from dataclasses import dataclass
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import pandas as pd
 
 from bayesmed.conclusions.claim import Claim
 from bayesmed.conclusions.comparison import ComparisonResult, compare
-from bayesmed.conclusions.envelope import envelope
 from bayesmed.conclusions.summary import rho_grid
-from bayesmed.conclusions.tipping import TippingResult, tipping
-from bayesmed.conclusions.yardsticks import YardsticksResult, yardsticks
 from bayesmed.core.errors import ArgumentError, BayesmedWarning
 from bayesmed.fit.diagnose import complaints_about
 from bayesmed.fit.grouped import GroupedResult
 from bayesmed.fit.result import FitResult
 from bayesmed.priors import AnyOn, panel
-from bayesmed.report.limits import Reach, reaches
 from bayesmed.study.audit import Audit, audit
+
+if TYPE_CHECKING:
+    from bayesmed.conclusions.tipping import TippingResult
+    from bayesmed.conclusions.yardsticks import YardsticksResult
+    from bayesmed.report.limits import Reach
 
 ANY_WITHIN = (-0.3, 0.3)
 """The range of rho over which the smallest and largest probability are told, whatever the belief."""
+
+
+@dataclass(frozen=True, eq=False)
+class Answer:
+    """What is told first, while the rest of a report is still to be worked out.
+
+    Attributes
+    ----------
+    title : str
+    result : FitResult
+    audit : Audit
+    comparison : ComparisonResult
+        Under every belief; holds claim, moderator points and interval width too.
+    own_beliefs : bool
+        False where the documented default set of beliefs stands in.
+    at : dict, optional
+        Moderator points as they were asked for.
+    warned : dict of str to Warning
+        What was warned of so far.
+    """
+
+    title: str
+    result: FitResult
+    audit: Audit
+    comparison: ComparisonResult
+    own_beliefs: bool
+    at: Any
+    warned: dict[str, Warning]
 
 
 @dataclass(frozen=True, eq=False)
@@ -61,9 +91,9 @@ class Findings:
     comparison: ComparisonResult
     own_beliefs: bool
     grid: pd.DataFrame
-    reaches: tuple[Reach, ...]
-    tipping: TippingResult | None
-    yardsticks: YardsticksResult | None
+    reaches: "tuple[Reach, ...]"
+    tipping: "TippingResult | None"
+    yardsticks: "YardsticksResult | None"
     envelope: pd.DataFrame | None
     complaints: list[str]
     warnings: tuple[str, ...]
@@ -77,7 +107,19 @@ def find(
     ci_prob: float = 0.95,
     title: str | None = None,
 ) -> Findings:
-    """Work out what a report says.
+    """Work out what a report says; parameters are those of :func:`answer`."""
+    return completed(answer(result, beliefs, at, claim, ci_prob, title))
+
+
+def answer(
+    result: FitResult,
+    beliefs: Mapping[str, Any] | None = None,
+    at: Any = None,
+    claim: Claim | None = None,
+    ci_prob: float = 0.95,
+    title: str | None = None,
+) -> Answer:
+    """Compare the beliefs, which is what a reader waits for.
 
     Parameters
     ----------
@@ -99,31 +141,65 @@ def find(
         If a belief, point or claim is not allowed.
     """
     observed = result.observed
-    with warnings.catch_warnings(record=True) as caught:
-        warnings.simplefilter("always")
+    warned: dict[str, Warning] = {}
+    with _each_warning_once(warned):
         comparison = compare(result, usual_beliefs(result) if beliefs is None else beliefs, at, claim, ci_prob)
-        tips = not result.joint and comparison.claim.effect != "total"
-        grid = rho_grid(result, None, at, comparison.claim, ci_prob)
+    return Answer(
+        title=title or f"{observed.exposure} → {observed.mediator_name} → {observed.outcome_name}",
+        result=result,
+        audit=audit(observed),
+        comparison=comparison,
+        own_beliefs=beliefs is not None,
+        at=at,
+        warned=warned,
+    )
+
+
+def completed(first: Answer) -> Findings:
+    """Work out what else a report says: fixed rho, tipping, yardsticks, envelope, diagnostics."""
+    # Here, so that the answer is not kept waiting for them.
+    from bayesmed.conclusions.envelope import envelope
+    from bayesmed.conclusions.tipping import tipping
+    from bayesmed.report.limits import reaches
+
+    result, comparison, at = first.result, first.comparison, first.at
+    claim, ci_prob = comparison.claim, comparison.ci_prob
+    tips = not result.joint and claim.effect != "total"
+    warned = dict(first.warned)
+    with _each_warning_once(warned):
+        grid = rho_grid(result, None, at, claim, ci_prob)
         found = Findings(
-            title=title or f"{observed.exposure} → {observed.mediator_name} → {observed.outcome_name}",
+            title=first.title,
             result=result,
-            audit=audit(observed),
+            audit=first.audit,
             comparison=comparison,
-            own_beliefs=beliefs is not None,
+            own_beliefs=first.own_beliefs,
             grid=grid,
-            reaches=reaches(result, comparison.points, comparison.claim, ci_prob, grid),
-            tipping=tipping(result, at, comparison.claim, ci_prob) if tips else None,
-            yardsticks=_yardsticks(result, at, comparison.claim) if tips else None,
-            envelope=envelope(result, AnyOn(*ANY_WITHIN), at, comparison.claim) if tips else None,
+            reaches=reaches(result, comparison.points, claim, ci_prob, grid),
+            tipping=tipping(result, at, claim, ci_prob) if tips else None,
+            yardsticks=_yardsticks(result, at, claim) if tips else None,
+            envelope=envelope(result, AnyOn(*ANY_WITHIN), at, claim) if tips else None,
             complaints=complaints_about(result),
             warnings=(),
         )
-    # Each conclusion warns of the same points again: once is enough, on the page and on the screen.
-    once = {str(one.message): one.message for one in caught}
-    for message in once.values():
-        warnings.warn(message, stacklevel=2)
-    ours = (words for words, message in once.items() if isinstance(message, BayesmedWarning))
+    ours = (words for words, message in warned.items() if isinstance(message, BayesmedWarning))
     return dataclasses.replace(found, warnings=tuple(ours))
+
+
+@contextmanager
+def _each_warning_once(warned: dict[str, Warning]) -> Iterator[None]:
+    """Let each warning that is not among those warned of through once, and put it there.
+
+    Each conclusion warns of the same points again: once is enough, on the page and on the screen.
+    """
+    with warnings.catch_warnings(record=True) as caught:
+        warnings.simplefilter("always")
+        yield
+    for one in caught:
+        words = str(one.message)
+        if words not in warned:
+            warned[words] = one.message if isinstance(one.message, Warning) else one.category(one.message)
+            warnings.warn(warned[words], stacklevel=3)
 
 
 def usual_beliefs(result: FitResult) -> dict[str, Any]:
@@ -132,7 +208,9 @@ def usual_beliefs(result: FitResult) -> dict[str, Any]:
     return {**own, **panel()}
 
 
-def _yardsticks(result: FitResult, at: Any, claim: Claim) -> YardsticksResult | None:
+def _yardsticks(result: FitResult, at: Any, claim: Claim) -> "YardsticksResult | None":
+    from bayesmed.conclusions.yardsticks import yardsticks
+
     if isinstance(result, GroupedResult):
         return None
     try:

@@ -251,9 +251,9 @@ nutpie.sample(nutpie.compile_pymc_model(model), draws=1000, tune=1000, chains=4,
 import sys
 import bayesmed.cli.report as room
 from bayesmed.cli import main
-def stop(found, folder, **options):
+def stop(first):
     raise SystemExit(0)
-room.write_findings = stop
+room.completed = stop
 main(["report", sys.argv[1], "--out", sys.argv[2]])
 """
     example = ROOT / "bayesmed" / "examples" / "knee_rehab" / "study.toml"

@@ -14,6 +14,7 @@ from bayesmed.cli import fitted as fitted_room
 from bayesmed.cli import main
 from bayesmed.cli import report as room
 from bayesmed.core.errors import StudyFileError
+from bayesmed.report import folder as folder_room
 
 Write = Callable[..., Path]
 Captured = pytest.CaptureFixture[str]
@@ -34,7 +35,7 @@ def test_report_prints_the_comparison_and_writes_the_folder(quick: Write, tmp_pa
         assert verdict in out
     assert "…" not in out
     assert "report.md" in out
-    assert [line[:7] for line in err.splitlines()] == ["Reading", "Drawing", "Compari", "Drawing"]
+    assert [line[:7] for line in err.splitlines()] == ["Reading", "Drawing", "Compari", "Looking", "Drawing"]
 
 
 def test_a_long_label_is_printed_whole(quick: Write, tmp_path: Path, capsys: Captured) -> None:
@@ -143,11 +144,11 @@ def test_version(capsys: Captured) -> None:
     assert re.fullmatch(r"bayesmed \d+\.\d+\.\d+\n", capsys.readouterr().out)
 
 
-@pytest.mark.parametrize("where", ["_fit", "find", "write_findings"])
+@pytest.mark.parametrize("where", ["_fit", "answer", "completed", "write_findings"])
 def test_an_interrupt_leaves_nothing_and_is_code_130(
     quick: Write, tmp_path: Path, capsys: Captured, monkeypatch: pytest.MonkeyPatch, where: str
 ) -> None:
-    at = room if where == "write_findings" else fitted_room
+    at = {"completed": room, "write_findings": folder_room}.get(where, fitted_room)
     monkeypatch.setattr(at, where, lambda *_, **__: signal.raise_signal(signal.SIGINT))
     path = quick()
     before = {each.name for each in tmp_path.iterdir()}
@@ -187,12 +188,12 @@ def test_exact_prints_its_table_without_sampler_or_plotting_library(quick: Write
     code = """
 import sys
 from bayesmed.cli import main, report
-def looked(found, folder, **_):
+def looked(first):
     heavy = {"pymc", "pytensor", "nutpie", "arviz_stats", "arviz_base", "arviz_plots", "matplotlib", "numba"}
     print("imported:", sorted(heavy & set(sys.modules)))
     raise SystemExit(0)
 import bayesmed.cli.report
-bayesmed.cli.report.write_findings = looked
+bayesmed.cli.report.completed = looked
 main(sys.argv[1:])
 """
     ran = subprocess.run(

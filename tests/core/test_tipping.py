@@ -3,8 +3,10 @@
 import numpy as np
 import pytest
 
+from bayesmed.core.line_moments import line_moments
 from bayesmed.core.mapping import odds
-from bayesmed.core.tipping import claim_probability, effect_moments, effect_quantiles, tipping_correlation
+from bayesmed.core.quantiles import effect_quantiles
+from bayesmed.core.tipping import claim_probability, tipping_correlation
 from bayesmed.priors import LKJ, FisherNormal, PointMass, StretchedBeta, TruncatedNormal, Uniform
 
 FAMILIES = [
@@ -86,7 +88,7 @@ def test_an_interval_and_a_probability_cannot_disagree(lines, belief):
     ids=repr,
 )
 def test_moments_are_finite_exactly_where_the_tail_allows(lines, belief, finite_mean, finite_sd):
-    mean, sd = effect_moments(*lines, belief)
+    mean, sd = line_moments(*lines).under(belief)
     assert np.all(np.isfinite(mean)) == finite_mean
     assert np.all(np.isfinite(sd)) == finite_sd
     assert not np.any(np.isnan(sd))
@@ -96,13 +98,13 @@ def test_moments_are_finite_exactly_where_the_tail_allows(lines, belief, finite_
 def test_moments_equal_brute_force(lines, belief):
     constant, slope = lines
     values = constant - slope * odds(belief.draw((100, *constant.shape), random_seed=9))
-    mean, sd = effect_moments(constant, slope, belief)
+    mean, sd = line_moments(constant, slope).under(belief)
     joined = values.transpose(1, 0, 2).reshape(3, -1)
     np.testing.assert_allclose(mean, joined.mean(axis=1), atol=5 * sd.max() / np.sqrt(joined.shape[1]))
     np.testing.assert_allclose(sd, joined.std(axis=1), rtol=0.01)
 
 
 def test_a_fixed_effect_has_finite_moments_under_any_belief():
-    mean, sd = effect_moments(np.array([[1.0, 3.0]]), np.zeros((1, 2)), LKJ(0.5))
+    mean, sd = line_moments(np.array([[1.0, 3.0]]), np.zeros((1, 2))).under(LKJ(0.5))
     assert mean[0] == 2
     assert sd[0] == 1

@@ -15,9 +15,11 @@ from bayesmed.core.errors import ArgumentError
 from bayesmed.fit.result import FitResult
 from bayesmed.plots.picture import Picture
 from bayesmed.report import folder as room
+from bayesmed.report import place
 from bayesmed.report import keeping
 from bayesmed.report.findings import Findings, find
-from bayesmed.report.folder import MARKER, check_folder, write_findings, write_report
+from bayesmed.report.folder import write_findings, write_report
+from bayesmed.report.place import MARKER, check_folder
 
 Write = Callable[..., Path]
 AT = {"confidence": [4, 8]}
@@ -164,7 +166,7 @@ def test_an_interrupted_run_leaves_what_was_there(
     def interrupt(*_: object) -> None:
         raise KeyboardInterrupt
 
-    monkeypatch.setattr(room, step, interrupt)
+    monkeypatch.setattr(place if hasattr(place, step) else room, step, interrupt)
     with pytest.raises(KeyboardInterrupt):
         write(folder, "total")
     assert names(tmp_path) == ({"out"} if there else set())

@@ -16,7 +16,8 @@ from bayesmed.cli import main
 from bayesmed.core.errors import FitError
 from bayesmed.fit.result import FitResult
 from bayesmed.report.findings import find
-from bayesmed.report.folder import MARKER, write_findings
+from bayesmed.report.folder import write_findings
+from bayesmed.report.place import MARKER
 from bayesmed.report.request import study_request
 from tests.report.hostile import HOSTILE, hostile
 
