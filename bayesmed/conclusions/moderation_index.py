@@ -6,7 +6,6 @@ and no belief about rho is needed.
 """
 
 import dataclasses
-import warnings
 from collections.abc import Mapping, Sequence
 from typing import Any
 
@@ -17,7 +16,7 @@ from bayesmed.conclusions.claim import Claim
 from bayesmed.conclusions.view import View, view_by_draw
 from bayesmed.conclusions.words import value_text
 from bayesmed.core.contrasts import Contrasts
-from bayesmed.core.errors import ArgumentError, DataWarning
+from bayesmed.core.errors import ArgumentError, DataWarning, warn
 from bayesmed.core.mapping import Array
 from bayesmed.fit.grouped import GroupedResult
 from bayesmed.fit.result import FitResult
@@ -202,10 +201,9 @@ def _warn_of_spread(result: FitResult, moderator: str) -> None:
         return  # each group has residual SDs of its own
     notable = [one for one in residual_spread(result.observed) if one.along == moderator and one.notable]
     if notable:
-        warnings.warn(
+        message = (
             f"moderation_index: the residual spread differs along {moderator!r} ({'; '.join(map(str, notable))}). One "
             "rho then moves indirect effects unequally, so a contrast shown as free of rho may still hold confounding; "
-            "for a categorical moderator fit with rho=ByGroup(…), which gives each group its own spreads",
-            DataWarning,
-            stacklevel=3,
+            "for a categorical moderator fit with rho=ByGroup(…), which gives each group its own spreads"
         )
+        warn(DataWarning(message))

@@ -1,5 +1,10 @@
 """What bayesmed raises and warns: each error is of the package's own type and subclasses a builtin."""
 
+import warnings
+from pathlib import Path
+
+HERE = str(Path(__file__).parents[1])
+
 
 class BayesmedError(Exception):
     """Base of every error that bayesmed raises on purpose."""
@@ -55,3 +60,8 @@ class DataWarning(BayesmedWarning):
 
 class ExtrapolationWarning(BayesmedWarning):
     """A conclusion is asked at a moderator value outside those observed."""
+
+
+def warn(warning: Warning) -> None:
+    """Give a warning that points at the line of the user's that led to it, however deep in the package it arose."""
+    warnings.warn(warning, skip_file_prefixes=(HERE,))

@@ -1,11 +1,9 @@
 """Sampler diagnostics: checked after each fit, told only when something is wrong."""
 
-import warnings
-
 import numpy as np
 import pandas as pd
 
-from bayesmed.core.errors import BayesmedError, SamplingWarning
+from bayesmed.core.errors import BayesmedError, SamplingWarning, warn
 from bayesmed.core.mapping import Array
 from bayesmed.fit.result import FitResult
 from bayesmed.study.points import points
@@ -21,7 +19,7 @@ def warn_if_wrong(result: FitResult) -> None:
     complaints = list(complaints_about(result))
     if complaints:
         advice = "Sample longer (draws=, tune=), or look at the audit for near-collinear terms."
-        warnings.warn(SamplingWarning("; ".join(complaints) + ". " + advice), stacklevel=4)
+        warn(SamplingWarning("; ".join(complaints) + ". " + advice))
 
 
 def complaints_about(result: FitResult) -> list[str]:

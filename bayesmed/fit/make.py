@@ -1,13 +1,12 @@
 """From an observed study to a fit, and from a fit to one under another belief."""
 
 import secrets
-import warnings
 from typing import Any, Literal
 
 import numpy as np
 import xarray as xr
 
-from bayesmed.core.errors import ArgumentError, BeliefNeededError, DataWarning, FitError, InformedWarning
+from bayesmed.core.errors import ArgumentError, BeliefNeededError, DataWarning, FitError, InformedWarning, warn
 from bayesmed.fit.cut import cut_draws
 from bayesmed.fit.diagnose import warn_if_wrong
 from bayesmed.fit.grouped import fit_groups
@@ -58,13 +57,13 @@ def fit_study(
     result = _fitted(observed, rho, method, draws, tune, chains, random_seed, coefficients, learn, progressbar)
     if result.statistics.informed and learn:
         message = informed_message(observed, result.statistics, result.coefficients)
-        warnings.warn(InformedWarning(message), stacklevel=3)
+        warn(InformedWarning(message))
     for identifier in observed.identifiers:
         message = (
             f"column {identifier.name!r} looks like an identifier and repeats (a value in up to {identifier.most} "
             "rows); rows are taken as independent, and intervals are too narrow if they are not"
         )
-        warnings.warn(DataWarning(message), stacklevel=3)
+        warn(DataWarning(message))
     return result
 
 
@@ -80,7 +79,7 @@ def _fitted(
     learn: bool,
     progressbar: bool,
 ) -> FitResult:
-    _check_counts(draws=(draws, 4), tune=(tune, 0), chains=(chains, 1))
+    _check_counts(draws=(draws, 4), tune=(tune, 1), chains=(chains, 1))
     if method not in ("nuts", "exact"):
         raise ArgumentError(f"method={method!r} is not known; allowed are 'nuts' and 'exact'")
     if not isinstance(learn, bool):
@@ -107,11 +106,7 @@ def _fitted(
     if informed:
         return _joint(base, rho, progressbar)
     # The likelihood is silent on rho: a belief about it needs no sampler.
-    terms = observed.mediator_terms, observed.outcome_terms
-    if shares_a_model(chosen):
-        tree = sample_shared(statistics, *terms, settings, progressbar)
-    else:
-        tree = sample_nuts(compile_model(build_model(statistics, *terms, None, chosen)), settings, progressbar)
+    tree = _silent(statistics, observed.mediator_terms, observed.outcome_terms, settings, chosen, progressbar)
     result = _finished(base.replaced(tree=tree, belief=None))
     return result if rho is None else result.with_belief(rho)
 
@@ -167,6 +162,21 @@ def _compiled(base: FitResult, belief: Any) -> Any:
     return base.memory["movable"].with_data(**belief_data(belief))
 
 
+def _silent(
+    statistics: Statistics,
+    mediator_terms: tuple[str, ...],
+    outcome_terms: tuple[str, ...],
+    settings: Settings,
+    coefficients: Coefficients,
+    progressbar: bool,
+) -> xr.DataTree:
+    """Sample a study whose data are silent on rho, by the compiled model that most of them share."""
+    if shares_a_model(statistics, coefficients):
+        return sample_shared(statistics, mediator_terms, outcome_terms, settings, progressbar)
+    compiled = compile_model(build_model(statistics, mediator_terms, outcome_terms, None, coefficients))
+    return sample_nuts(compiled, settings, progressbar)
+
+
 def _grouped(
     observed: Observed,
     statistics: Statistics,
@@ -183,7 +193,7 @@ def _grouped(
     def sample(part: Statistics, m_terms: tuple[str, ...], y_terms: tuple[str, ...], own: Settings) -> xr.DataTree:
         if own.method == "exact":
             return sample_exact(m_terms, y_terms, part, own)
-        return sample_shared(part, m_terms, y_terms, own, progressbar)
+        return _silent(part, m_terms, y_terms, own, coefficients, progressbar)
 
     result = fit_groups(observed, statistics, belief, settings, sample)
     for part in result.parts.values():

@@ -1,6 +1,7 @@
 """What a fit writes into its tree, so that the draws can be understood and made again."""
 
 import json
+from functools import lru_cache
 from importlib.metadata import version
 
 from bayesmed.fit.result import FitResult
@@ -26,5 +27,11 @@ def describe(result: FitResult) -> None:
         learn=int(settings.learn),
         rho_prior="none" if result.belief is None else repr(result.belief),
         coefficient_priors=repr(result.coefficients) if settings.method == "nuts" else "reference prior ∝ 1/sigma²",
-        versions=json.dumps({name: version(name) for name in packages}),
+        versions=json.dumps({name: _installed(name) for name in packages}),
     )
+
+
+@lru_cache
+def _installed(package: str) -> str:
+    # Read from a file each time it is asked for.
+    return version(package)

@@ -29,6 +29,8 @@ def sample_nuts(compiled: Any, settings: Settings, progressbar: bool) -> xr.Data
         chains=settings.chains,
         seed=settings.random_seed,
         progress_bar=progressbar,
+        # Nothing looks at them, and building their tables takes as long as those of the draws.
+        save_warmup=False,
     )
     posterior = tree["posterior"].to_dataset()
     if "rho" in posterior and posterior["rho"].dims != ("chain", "draw"):

@@ -1,36 +1,125 @@
 """One compiled model for every study that the default model fits, whatever its data and its number of terms.
 
-Compiling is most of what a fit costs, and the smaller a model, the sooner it is compiled. The model of
-:func:`~bayesmed.fit.model.build_model` without a belief is quadratic in the coefficients: with both coefficient vectors
-in whitened coordinates z, side by side, its log density is
+Compiling is most of what a fit costs, and the smaller a model, the sooner it is compiled. Given the residual SD, the
+coefficients of a regression with the default prior are normal, so they need no sampler: the compiled model holds the
+two residual SDs alone, coefficients integrated out, and each draw of an SD gets its draw of coefficients after.
 
-    -½ Σ_k w_k (target - matrix z)_k² - Σ_e n_e log σ_e - ½ Σ_e ((log σ_e - log s_e) / 2)²
+Take the posterior mode of an equation's p coefficients at the estimated residual SD s as the origin, and directions z
+in which the posterior at s is standard normal. The default prior is a multiple of the data's centred cross product, so
+in r of the directions its share of that precision is one number b, and in the others (the mean fitted value) it is
+none. With g the slope of the prior at the origin, S the sum of squared residuals there over s², w = (s / σ)² and
+d = w (1 - b) + b,
 
-where w is 1 in the rows of the default prior and 1/σ_e² in the rows of the data of equation e. Target, matrix, n and
-log s are data of the compiled model. Vectors are filled up to a multiple of eight with terms that touch no row and have
-a standard normal density of their own, so that a study of another shape takes the compiled model as it is.
+    log p(σ | data) = -n log σ - ½ w S + ½ (w - 1)² |g|² / d - ½ r log d - ½ (p - r) log w - ½ ((log σ - log s_y) / 2)²
+    z_k | σ, data  ~  Normal((w - 1) g_k / d, 1 / d),  or Normal(0, 1 / w) where the prior is flat,
+
+up to a constant, with n the number of rows and s_y the SD of the response.
 """
 
+from dataclasses import dataclass
 from functools import lru_cache
 from typing import Any
 
 import numpy as np
 import xarray as xr
-from scipy.linalg import block_diag
+from scipy.linalg import solve_triangular
 
 from bayesmed.core.mapping import Array
-from bayesmed.fit.coefficients import SIGMA_LOG_SD, CoefficientPrior, coefficient_prior
+from bayesmed.core.regression import Regression
+from bayesmed.fit.coefficients import SIGMA_LOG_SD, coefficient_prior
 from bayesmed.fit.result import Settings
 from bayesmed.fit.sample import compile_model, sample_nuts
 from bayesmed.fit.statistics import Statistics
 from bayesmed.priors.coefficient_set import Coefficients
 
-MULTIPLE = 8
+
+@dataclass(frozen=True, eq=False)
+class Collapsed:
+    """One regression under the default prior, its coefficients integrated out.
+
+    Attributes
+    ----------
+    centre, turn : array, shape (term,) and (term, term)
+        Coefficients are ``centre + turn z``.
+    touched : int
+        r, how many of z, the first ones, the prior has a say in.
+    share : float
+        b, the prior's share of their posterior precision at s.
+    pull : array, shape (term,)
+        g, zero beyond the first r.
+    rows, squares, log_sd, log_response_sd : float
+        n, S, log s and log s_y.
+    unit : float
+        About the posterior SD of log σ.
+    """
+
+    centre: Array
+    turn: Array
+    touched: int
+    share: float
+    pull: Array
+    rows: float
+    squares: float
+    log_sd: float
+    log_response_sd: float
+    unit: float
+
+    def conditional(self, sigma: Array) -> tuple[Array, Array]:
+        """Return mean and precision of each z given residual SDs of shape (draw,), both of shape (draw, term)."""
+        w = np.exp(2 * (self.log_sd - np.log(sigma)))[..., None]
+        share = np.where(np.arange(len(self.centre)) < self.touched, self.share, 0.0)
+        precision = w * (1 - share) + share
+        return (w - 1) * self.pull / precision, precision
+
+    def coefficients(self, sigma: Array, random: np.random.Generator) -> Array:
+        """Return a draw of the coefficients for each residual SD, shape (draw, term)."""
+        mean, precision = self.conditional(sigma)
+        z = mean + random.standard_normal(mean.shape) / np.sqrt(precision)
+        return np.asarray(self.centre + z @ self.turn.T)
+
+    @property
+    def numbers(self) -> tuple[float, ...]:
+        """What the compiled model is given of the equation."""
+        return (
+            self.rows - (len(self.centre) - self.touched), self.squares, float(self.pull @ self.pull), self.touched,
+            self.share, self.unit, self.log_sd - self.log_response_sd,
+        )  # fmt: skip
 
 
-def shares_a_model(coefficients: Coefficients) -> bool:
-    """True if a study with these coefficient priors is one of those that share a compiled model."""
-    return coefficients == Coefficients()
+def collapsed(regression: Regression, terms: tuple[str, ...]) -> Collapsed:
+    """Return a regression under the default prior with its coefficients integrated out."""
+    prior = coefficient_prior(regression, terms, {})
+    unwhiten = prior.unwhiten
+    _, values, turned = np.linalg.svd(prior.root @ unwhiten)
+    # Each is the root of b or zero, and b is far from zero next to rounding.
+    touched = int(np.sum(values > values.max(initial=0.0) / 2))
+    turn = unwhiten @ turned.T
+    pull = turn.T @ (prior.root.T @ (prior.root @ prior.centre))
+    pull[touched:] = 0.0
+    s = regression.residual_sd
+    residuals = regression.factor[:, -1] - regression.factor[:, :-1] @ prior.centre
+    return Collapsed(
+        centre=prior.centre,
+        turn=turn,
+        touched=touched,
+        share=float(np.mean(values[:touched] ** 2)) if touched else 0.0,
+        pull=pull,
+        rows=float(regression.rows),
+        squares=float(residuals @ residuals) / s**2,
+        log_sd=float(np.log(s)),
+        log_response_sd=float(np.log(regression.response_sd)),
+        unit=float(1 / np.sqrt(2 * regression.degrees_of_freedom)),
+    )
+
+
+def shares_a_model(statistics: Statistics, coefficients: Coefficients) -> bool:
+    """True if a study is one of those that share a compiled model: default priors, and a constant in both equations.
+
+    Without a constant the default prior, whose fitted values are centred, is no multiple of what the data say.
+    """
+    if coefficients != Coefficients():
+        return False
+    return all(_has_constant(each) for each in (statistics.mediator, statistics.outcome))
 
 
 def sample_shared(
@@ -41,108 +130,55 @@ def sample_shared(
     progressbar: bool,
 ) -> xr.DataTree:
     """Sample the default model of a study, and return the tree as its own model would name it."""
-    size = padded(max(len(mediator_terms), len(outcome_terms)))
-    priors = default_priors(statistics, mediator_terms, outcome_terms)
-    tree = sample_nuts(_compiled(size).with_data(**model_data(statistics, priors, size)), settings, progressbar)
-    tree["posterior"] = xr.DataTree(_named(tree, priors, mediator_terms, outcome_terms))
-    for warmup in [name for name in tree.children if name.startswith("warmup")]:
-        # In coordinates that mean nothing to a reader.
-        del tree[warmup]
+    equations = collapsed(statistics.mediator, mediator_terms), collapsed(statistics.outcome, outcome_terms)
+    tree = sample_nuts(_compiled().with_data(**model_data(equations)), settings, progressbar)
+    posterior = tree["posterior"].to_dataset()
+    random = np.random.default_rng([settings.random_seed, 1])
+    named = xr.Dataset(coords={dim: posterior[dim] for dim in ("chain", "draw")}, attrs=posterior.attrs)
+    names = (("alpha", "mediator_term", mediator_terms, "sigma_m"), ("gamma", "outcome_term", outcome_terms, "tau"))
+    for place, (equation, (name, dim, terms, spread)) in enumerate(zip(equations, names, strict=True)):
+        x = posterior["x"].to_numpy()[..., place]
+        sigma = np.exp(equation.log_sd + equation.unit * x)
+        values = equation.coefficients(sigma.ravel(), random).reshape(*sigma.shape, len(terms))
+        named = named.assign_coords({dim: list(terms)})
+        named[name] = (("chain", "draw", dim), values)
+        named[spread] = (("chain", "draw"), sigma)
+    tree["posterior"] = xr.DataTree(named)
     return tree
 
 
-def padded(terms: int) -> int:
-    """Return the number of terms, real and inert, of the shared model that takes `terms` of them."""
-    return -(-terms // MULTIPLE) * MULTIPLE
+def model_data(equations: tuple[Collapsed, Collapsed]) -> dict[str, Array]:
+    """Return a study as the data of the shared model, shape (number, equation)."""
+    return {"equations": np.array([one.numbers for one in equations]).T}
 
 
-def default_priors(
-    statistics: Statistics, mediator_terms: tuple[str, ...], outcome_terms: tuple[str, ...]
-) -> tuple[CoefficientPrior, CoefficientPrior]:
-    """Return the default coefficient priors of both equations."""
-    return (
-        coefficient_prior(statistics.mediator, mediator_terms, {}),
-        coefficient_prior(statistics.outcome, outcome_terms, {}),
-    )
-
-
-def model_data(
-    statistics: Statistics, priors: tuple[CoefficientPrior, CoefficientPrior], size: int
-) -> dict[str, Array]:
-    """Return a study as the data of the shared model of `size` terms an equation."""
-    equations = (statistics.mediator, statistics.outcome)
-    prior_rows, data_rows, prior_targets, data_targets = [], [], [], []
-    for regression, prior in zip(equations, priors, strict=True):
-        p = regression.terms
-        from_prior, from_data = np.eye(size), np.zeros((size + 1, size))
-        from_prior[:p, :p] = 0.0
-        from_prior[: len(prior.root), :p] = prior.root @ prior.unwhiten
-        from_data[: p + 1, :p] = regression.factor[:, :-1] @ prior.unwhiten
-        prior_rows.append(from_prior)
-        data_rows.append(from_data)
-        prior_targets.append(_filled(-prior.root @ prior.centre, size))
-        data_targets.append(_filled(regression.factor[:, -1] - regression.factor[:, :-1] @ prior.centre, size + 1))
-    return {
-        "matrix": np.vstack([block_diag(*prior_rows), block_diag(*data_rows)]),
-        "target": np.concatenate([*prior_targets, *data_targets]),
-        "rows": np.array([float(one.rows) for one in equations]),
-        "log_sd": np.array([np.log(one.response_sd) for one in equations]),
-    }
-
-
-def shared_model(data: dict[str, Array], size: int) -> Any:
-    """Return the shared model with a study in it; free variables ``z`` and ``log_sigma``."""
+def shared_model(data: dict[str, Array]) -> Any:
+    """Return the shared model with a study in it; the free variable ``x`` is ``(log σ - log s) / unit``."""
     import pymc as pm
     import pytensor.tensor as pt
 
-    of_prior = np.repeat([1.0, 0.0], [2 * size, 2 * (size + 1)])
-    of_data = np.vstack([np.zeros((2 * size, 2)), np.repeat(np.eye(2), size + 1, axis=0)])
     with pm.Model() as model:
-        held = {name: pm.Data(name, value) for name, value in data.items()}
-        z = pm.Flat("z", shape=2 * size, initval=np.zeros(2 * size))
-        log_sigma = pm.Flat("log_sigma", shape=2, initval=np.zeros(2))
-        residual = held["target"] - pt.dot(held["matrix"], z)
-        weight = of_prior + pt.dot(of_data, pt.exp(-2 * log_sigma))
-        spread = ((log_sigma - held["log_sd"]) / SIGMA_LOG_SD) ** 2
-        density = pt.sum(weight * residual**2) / 2 + pt.sum(held["rows"] * log_sigma + spread / 2)
-        pm.Potential("density", -density)
+        # One block, as every piece of data by itself takes time to compile.
+        held = pm.Data("equations", data["equations"])
+        rows, squares, pull, touched, share, unit, beyond = (held[k] for k in range(7))
+        x = pm.Flat("x", shape=2, initval=np.zeros(2))
+        log_ratio = unit * x
+        w = pt.exp(-2 * log_ratio)
+        precision = w * (1 - share) + share
+        of_terms = (w - 1) ** 2 * pull / precision - touched * pt.log(precision)
+        spread = ((log_ratio + beyond) / SIGMA_LOG_SD) ** 2
+        pm.Potential("density", pt.sum((of_terms - w * squares - spread) / 2 - rows * log_ratio))
     return model
 
 
-@lru_cache(maxsize=8)
-def _compiled(size: int) -> Any:
+def _has_constant(regression: Regression) -> bool:
+    """True if some combination of the columns is the same in all rows, so that centring takes away one direction."""
+    factor, centred = regression.factor[:-1, :-1], regression.centred_factor
+    values = np.linalg.svd(solve_triangular(factor, centred.T, trans="T"), compute_uv=False)
+    return bool(values[-1] < 1e-6)
+
+
+@lru_cache(maxsize=1)
+def _compiled() -> Any:
     """Return the shared model compiled, with data of no study in it."""
-    count = 2 * size + 2 * (size + 1)
-    blank = {
-        "matrix": np.eye(count, 2 * size),
-        "target": np.ones(count),
-        "rows": np.ones(2),
-        "log_sd": np.zeros(2),
-    }
-    return compile_model(shared_model(blank, size))
-
-
-def _named(
-    tree: xr.DataTree,
-    priors: tuple[CoefficientPrior, CoefficientPrior],
-    mediator_terms: tuple[str, ...],
-    outcome_terms: tuple[str, ...],
-) -> xr.Dataset:
-    """Return the posterior in the study's own terms."""
-    posterior = tree["posterior"].to_dataset()
-    z, sigma = posterior["z"].to_numpy(), np.exp(posterior["log_sigma"].to_numpy())
-    halves = np.split(z, 2, axis=-1)
-    named = xr.Dataset(coords={dim: posterior[dim] for dim in ("chain", "draw")}, attrs=posterior.attrs)
-    for place, (name, dim, terms, spread) in enumerate(
-        (("alpha", "mediator_term", mediator_terms, "sigma_m"), ("gamma", "outcome_term", outcome_terms, "tau"))
-    ):
-        prior = priors[place]
-        values = prior.centre + halves[place][..., : len(terms)] @ prior.unwhiten.T
-        named = named.assign_coords({dim: list(terms)})
-        named[name] = (("chain", "draw", dim), values)
-        named[spread] = (("chain", "draw"), sigma[..., place])
-    return named
-
-
-def _filled(values: Array, size: int) -> Array:
-    return np.append(values, np.zeros(size - len(values)))
+    return compile_model(shared_model({"equations": np.ones((7, 2))}))

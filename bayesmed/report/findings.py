@@ -12,7 +12,7 @@ import pandas as pd
 from bayesmed.conclusions.claim import Claim
 from bayesmed.conclusions.comparison import ComparisonResult, compare
 from bayesmed.conclusions.summary import rho_grid
-from bayesmed.core.errors import ArgumentError, BayesmedWarning
+from bayesmed.core.errors import ArgumentError, BayesmedWarning, warn
 from bayesmed.fit.diagnose import complaints_about
 from bayesmed.fit.grouped import GroupedResult
 from bayesmed.fit.result import FitResult
@@ -199,7 +199,7 @@ def _each_warning_once(warned: dict[str, Warning]) -> Iterator[None]:
         words = str(one.message)
         if words not in warned:
             warned[words] = one.message if isinstance(one.message, Warning) else one.category(one.message)
-            warnings.warn(warned[words], stacklevel=3)
+            warn(warned[words])
 
 
 def usual_beliefs(result: FitResult) -> dict[str, Any]:

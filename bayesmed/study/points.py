@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import itertools
 import math
-import warnings
 from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
@@ -12,7 +11,7 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
-from bayesmed.core.errors import ArgumentError, ExtrapolationWarning
+from bayesmed.core.errors import ArgumentError, ExtrapolationWarning, warn
 from bayesmed.study.moderators import coded_columns, kind_of, reserved
 from bayesmed.study.observe import Observed
 
@@ -210,9 +209,8 @@ def _warn_outside(observed: Observed, dims: Mapping[str, tuple[Any, ...]], scala
         low, high = column.min(), column.max()
         outside = [value for value in values if value < low or value > high]
         if outside:
-            warnings.warn(
+            message = (
                 f"at: '{name}' = {', '.join(f'{v:g}' for v in outside)} lies outside the values observed, "
-                f"{low:g} to {high:g}; the conclusion there rests on the formula alone.",
-                ExtrapolationWarning,
-                stacklevel=4,
+                f"{low:g} to {high:g}; the conclusion there rests on the formula alone."
             )
+            warn(ExtrapolationWarning(message))

@@ -6,6 +6,7 @@ from scipy import stats
 
 import bayesmed as bm
 from bayesmed.conclusions.accuracy import effective_draws
+from bayesmed.fit import diagnose
 
 SILENT = {"exposure": "x", "mediator": "m ~ x * z + c", "outcome": "y ~ m * z + x * z + c"}
 QUIET = {"progressbar": False}
@@ -99,3 +100,17 @@ def test_an_extended_model_is_adopted(study):
     assert set(fit.effects(at={}).data_vars) >= {"indirect", "direct", "total"}
     with pytest.raises(bm.errors.FitError, match="adopted"):
         fit.summary(rho=0.0)
+
+
+def test_a_warning_points_at_the_users_line(simulated, monkeypatch):
+    monkeypatch.setattr(diagnose, "LARGEST_RHAT", 0.5)
+    study = bm.Study(simulated(40, rho=0.3, seed=2), exposure="x", mediator="m ~ x + z", outcome="y ~ m + x + z")
+    with pytest.warns(bm.errors.SamplingWarning) as caught:
+        study.fit(draws=150, tune=150, chains=3, random_seed=1, progressbar=False)
+    assert caught[0].filename == __file__
+
+
+def test_a_sampler_needs_draws_to_adapt(simulated):
+    study = bm.Study(simulated(40, rho=0.3, seed=2), exposure="x", mediator="m ~ x + z", outcome="y ~ m + x + z")
+    with pytest.raises(bm.errors.ArgumentError, match="tune=0 must be a whole number of at least 1"):
+        study.fit(tune=0, random_seed=1, progressbar=False)

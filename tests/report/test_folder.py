@@ -15,8 +15,7 @@ from bayesmed.core.errors import ArgumentError
 from bayesmed.fit.result import FitResult
 from bayesmed.plots.picture import Picture
 from bayesmed.report import folder as room
-from bayesmed.report import place
-from bayesmed.report import keeping
+from bayesmed.report import keeping, place
 from bayesmed.report.findings import Findings, find
 from bayesmed.report.folder import write_findings, write_report
 from bayesmed.report.place import MARKER, check_folder
