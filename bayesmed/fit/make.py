@@ -79,9 +79,9 @@ def _fitted(
     learn: bool,
     progressbar: bool,
 ) -> FitResult:
-    _check_counts(draws=(draws, 4), tune=(tune, 1), chains=(chains, 1))
     if method not in ("nuts", "exact"):
         raise ArgumentError(f"method={method!r} is not known; allowed are 'nuts' and 'exact'")
+    _check_counts(draws=(draws, 4), tune=(tune, 1 if method == "nuts" else 0), chains=(chains, 1))
     if not isinstance(learn, bool):
         raise ArgumentError(f"learn={learn!r} must be True or False")
     seed = _checked_seed(random_seed)

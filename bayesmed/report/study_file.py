@@ -238,7 +238,7 @@ def _fit(values: Mapping[str, Any] | None) -> FitRequest:
     if values is None:
         return usual
     table = StrictTable(values, "fit", FIT)
-    counts = {"draws": 4, "tune": 1, "chains": 1}
+    counts = {"draws": 4, "tune": 0, "chains": 1}
     return FitRequest(
         method=cast(Literal["nuts", "exact"], table.one_of("method", ("nuts", "exact"), usual.method)),
         random_seed=table.whole("random_seed", None, 0),
