@@ -7,7 +7,7 @@ from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from bayesmed import priors
+    from bayesmed import plots, priors
     from bayesmed.conclusions.claim import Claim
     from bayesmed.conclusions.prior_map import contour
     from bayesmed.conclusions.varying import Covariance
@@ -96,7 +96,7 @@ _HOME = {
         "bayesmed.priors",
     ),
 }
-_MODULES = {"errors": "bayesmed.core.errors", "priors": "bayesmed.priors"}
+_MODULES = {"errors": "bayesmed.core.errors", "plots": "bayesmed.plots", "priors": "bayesmed.priors"}
 
 __all__ = [
     "LKJ",
@@ -138,6 +138,7 @@ __all__ = [
     "from_quantiles",
     "load",
     "load_example",
+    "plots",
     "priors",
     "with_mean_and_sd",
 ]

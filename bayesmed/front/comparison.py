@@ -1,6 +1,6 @@
 """Comparison: several beliefs about rho side by side."""
 
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import pandas as pd
 
@@ -8,6 +8,9 @@ from bayesmed.conclusions.claim import Claim
 from bayesmed.conclusions.comparison import ComparisonResult
 from bayesmed.conclusions.differences import differences
 from bayesmed.front.shown import as_html, as_text
+
+if TYPE_CHECKING:
+    from bayesmed.plots.picture import Picture
 
 
 class Comparison:
@@ -70,8 +73,8 @@ class Comparison:
         """The priors compared, by label."""
         return dict(self._result.beliefs)
 
-    def plot(self, **options: Any) -> Any:
-        """Draw the probability of the claim under every belief; see ``bayesmed.plots.beliefs``."""
+    def plot(self, **options: Any) -> "Picture":
+        """Draw the probability of the claim under every belief; see ``bayesmed.plots.plot_beliefs``."""
         from bayesmed.plots.beliefs import plot_beliefs
 
         return plot_beliefs(self._result, **options)

@@ -1,7 +1,7 @@
 """Tipping: at which residual correlation the draws cross the claim's limit."""
 
-from collections.abc import Sequence
-from typing import Any
+from collections.abc import Mapping, Sequence
+from typing import TYPE_CHECKING, Any
 
 import pandas as pd
 import xarray as xr
@@ -10,6 +10,9 @@ from bayesmed.conclusions.claim import Claim
 from bayesmed.conclusions.shares import shares
 from bayesmed.conclusions.tipping import CAUTION, TippingResult
 from bayesmed.front.shown import as_html, as_text
+
+if TYPE_CHECKING:
+    from bayesmed.plots.picture import Picture
 
 
 class Tipping:
@@ -80,6 +83,12 @@ class Tipping:
         given_mediator, the same as a regression that holds the mediator shows it.
         """
         return shares(self._result, r2_mediator)
+
+    def plot(self, beliefs: Mapping[str, Any], **options: Any) -> "Picture":
+        """Draw where the claim tips above what is believed about rho; see ``bayesmed.plots.plot_tipping``."""
+        from bayesmed.plots.tipping import plot_tipping
+
+        return plot_tipping(self._result, beliefs, **options)
 
     def __repr__(self) -> str:
         return "\n".join([self._heading(), "", as_text(self.table), "", CAUTION])

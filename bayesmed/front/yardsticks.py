@@ -1,9 +1,14 @@
 """Yardsticks: unmeasured causes beside measured covariates."""
 
+from typing import TYPE_CHECKING, Any
+
 import pandas as pd
 
 from bayesmed.conclusions.yardsticks import YardsticksResult
 from bayesmed.front.shown import as_html, as_text
+
+if TYPE_CHECKING:
+    from bayesmed.plots.picture import Picture
 
 HEADING = (
     "The rho that an unmeasured cause would leave, were it so many times as strong as a measured covariate (median and "
@@ -49,6 +54,12 @@ class Yardsticks:
     def sentences(self) -> tuple[str, ...]:
         """The overturning strengths in words."""
         return self._result.sentences
+
+    def plot(self, tipping: Any = None, **options: Any) -> "Picture":
+        """Draw the causes beside where the claim tips, if given; see ``bayesmed.plots.plot_yardsticks``."""
+        from bayesmed.plots.yardsticks import plot_yardsticks
+
+        return plot_yardsticks(self._result, tipping, **options)
 
     def __repr__(self) -> str:
         return "\n".join([HEADING, "", as_text(self.table), "", *self.sentences])

@@ -1,14 +1,17 @@
 """Every belief and subgroup at a glance: how far the claim is beyond what it requires, or short of it."""
 
+from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from bayesmed.conclusions.claim import CLOSE, FAILS, HOLDS
 from bayesmed.conclusions.comparison import ComparisonResult
-from bayesmed.conclusions.words import point_text, probability_text
-from bayesmed.plots.layout import Sheet, broken, line_height, text_width
-from bayesmed.plots.picture import FAINT, INK, PAPER, Picture, drawing
+from bayesmed.conclusions.words import probability_text
+from bayesmed.plots.layout import Sheet, broken, line_height, sheet_width, text_width
+from bayesmed.plots.opened import opened
+from bayesmed.plots.panels import head
+from bayesmed.plots.picture import Picture, colours, drawing, style
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -26,7 +29,13 @@ CLIP = 0.0005
 TICKS = (0.01, 0.1, 0.5, 0.9, 0.99)
 
 
-def plot_beliefs(comparison: ComparisonResult, title: str | None = None) -> Picture:
+def plot_beliefs(
+    comparison: Any,
+    title: str | None = None,
+    theme: Any = "blue",
+    labels: Mapping[str, str] | None = None,
+    ax: Any = None,
+) -> Picture:
     """Draw the probability of the claim under every belief and at every moderator point.
 
     A bar runs from the probability that the claim requires to the one it has, on a scale of log odds, so that
@@ -36,20 +45,25 @@ def plot_beliefs(comparison: ComparisonResult, title: str | None = None) -> Pict
 
     Parameters
     ----------
-    comparison : ComparisonResult
-        Of ``bayesmed.conclusions.comparison.compare``.
+    comparison : Comparison
+        Of ``fit.compare``.
     title : str, optional
         In place of the usual one.
+    theme : {"blue", "black", "dark"} or Theme
+    labels : dict of str to str, optional
+        Words in place of names of beliefs and moderators.
+    ax : matplotlib.axes.Axes, optional
+        Whose place the picture takes; it says how large it must be.
 
     Returns
     -------
     Picture
     """
+    comparison = opened(comparison, ComparisonResult, "plot_beliefs: comparison= must be what fit.compare() returned")
     claim = comparison.claim
     words = title or f"Probability of {claim} under each belief, against the {claim.required:g} it requires"
-    with drawing():
-        figure = _draw(comparison, words)
-    return Picture(figure, words, _text(comparison))
+    with drawing(theme, labels, ax):
+        return Picture(_draw(comparison, words), words, _text(comparison), colours().paper)
 
 
 def _draw(comparison: ComparisonResult, title: str) -> Any:
@@ -57,11 +71,12 @@ def _draw(comparison: ComparisonResult, title: str) -> Any:
     count = len(points)
     columns = count if count <= 3 else 3 if count in (5, 6, 9) else 4
     bands = -(-count // columns)
-    cell = (WIDTH - LEFT - RIGHT - GAP * (columns - 1)) / columns
-    labels = [broken(label, SIZE, LEFT - 0.35) for label in comparison.beliefs]
+    width = sheet_width(WIDTH, WIDTH)
+    cell = (width - LEFT - RIGHT - GAP * (columns - 1)) / columns
+    labels = [broken(style().named(label), SIZE, LEFT - 0.35) for label in comparison.beliefs]
     heights = [max(0.27, len(lines) * line_height(SIZE) + 0.08) for lines in labels]
-    heads = [broken(point_text(point), HEAD_SIZE, cell, "bold") for point in points]
-    title_lines = broken(title, TITLE_SIZE, WIDTH - 0.4, "bold")
+    heads = [broken(head(point), HEAD_SIZE, cell, "bold") for point in points]
+    title_lines = broken(title, TITLE_SIZE, width - 0.4, "bold")
 
     key_top = 0.15 + len(title_lines) * line_height(TITLE_SIZE) + 0.08
     tops, top = [], key_top + 0.24 + 0.12
@@ -70,7 +85,7 @@ def _draw(comparison: ComparisonResult, title: str) -> Any:
         top += line_height(SMALL) + 0.06
         tops.append(top)
         top += sum(heights) + 0.32
-    sheet = Sheet(WIDTH, top + 0.05)
+    sheet = Sheet(width, top + 0.05)
     sheet.write(title_lines, 0.2, 0.15, TITLE_SIZE, weight="bold")
     _key(sheet, key_top)
     for band, top in enumerate(tops):
@@ -107,11 +122,11 @@ def _cell(axes: "Axes", rows: "pd.DataFrame", heights: list[float], required: fl
     columns = (rows["probability"], rows["mcse"], rows["verdict"], heights)
     for p, error, verdict, height in zip(*columns, strict=True):
         middle = top + height / 2
-        axes.axhline(middle, color=FAINT, linewidth=0.4, zorder=0)
+        axes.axhline(middle, color=colours().faint, linewidth=0.4, zorder=0)
         _bar(axes, start, _log_odds(p), middle, min(0.15, 0.55 * height), verdict)
         _bracket(axes, _log_odds(p - 2 * error), _log_odds(p + 2 * error), middle)
         top += height
-    axes.axvline(start, color=INK, linewidth=1.2, zorder=4)
+    axes.axvline(start, color=colours().ink, linewidth=1.2, zorder=4)
     axes.set_yticks([])
     shown = TICKS if axes.get_window_extent().width / axes.figure.dpi > 1.5 else (TICKS[0], TICKS[2], TICKS[4])
     axes.set_xticks([_log_odds(p) for p in shown], [f"{p:g}" for p in shown])
@@ -120,11 +135,13 @@ def _cell(axes: "Axes", rows: "pd.DataFrame", heights: list[float], required: fl
 
 def _bar(axes: "Axes", start: float, end: float, middle: float, height: float, verdict: str) -> None:
     faces: dict[str, dict[str, Any]] = {
-        HOLDS: {"facecolor": INK},
-        FAILS: {"facecolor": PAPER, "hatch": "/////"},
-        CLOSE: {"facecolor": PAPER},
+        HOLDS: {"facecolor": colours().ink},
+        FAILS: {"facecolor": colours().paper, "hatch": "/////"},
+        CLOSE: {"facecolor": colours().paper},
     }
-    axes.barh(middle, end - start, height, left=start, edgecolor=INK, linewidth=0.9, zorder=3, **faces[verdict])
+    axes.barh(
+        middle, end - start, height, left=start, edgecolor=colours().ink, linewidth=0.9, zorder=3, **faces[verdict]
+    )
 
 
 def _bracket(axes: "Axes", low: float, high: float, middle: float) -> None:
@@ -134,10 +151,10 @@ def _bracket(axes: "Axes", low: float, high: float, middle: float) -> None:
     inches = abs(axes.transData.transform((high, 0))[0] - axes.transData.transform((low, 0))[0])
     if inches / axes.figure.dpi < LEAST_BRACKET:
         return
-    rim = [withStroke(linewidth=2.4, foreground=PAPER)]
+    rim = [withStroke(linewidth=2.4, foreground=colours().paper)]
     along = [low, low, low, high, high, high]
     across = [middle - 0.05, middle + 0.05, middle, middle, middle - 0.05, middle + 0.05]
-    axes.plot(along, across, color=INK, linewidth=1.0, zorder=5, path_effects=rim, clip_on=False)
+    axes.plot(along, across, color=colours().ink, linewidth=1.0, zorder=5, path_effects=rim, clip_on=False)
 
 
 def _key(sheet: Sheet, top: float) -> None:
@@ -174,10 +191,10 @@ def _text(comparison: ComparisonResult) -> str:
     lines = [f"The claim {claim} requires a probability of {claim.required:g}."]
     count = len(comparison.points.values)
     for k, point in enumerate(comparison.points.values):
-        lines += ["", f"{point_text(point)}:"]
+        lines += ["", f"{head(point)}:"]
         for _, row in comparison.claimed.iloc[k::count].iterrows():
             probability = probability_text(row["probability"], row["mcse"])
-            lines.append(
-                f"  {row['prior']}: probability {probability}, Monte Carlo error {row['mcse']:.1g}, {row['verdict']}"
-            )
+            label = style().named(row["prior"])
+            error = f"Monte Carlo error {row['mcse']:.1g}"
+            lines.append(f"  {label}: probability {probability}, {error}, {row['verdict']}")
     return "\n".join(lines)

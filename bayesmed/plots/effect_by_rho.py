@@ -7,12 +7,14 @@ import numpy as np
 
 from bayesmed.conclusions.claim import Claim, as_claim
 from bayesmed.conclusions.summary import checked_width
-from bayesmed.conclusions.words import number_text, point_text, probability_text
+from bayesmed.conclusions.words import number_text, probability_text
 from bayesmed.core.errors import ArgumentError
 from bayesmed.core.mapping import Array
 from bayesmed.fit.result import FitResult
-from bayesmed.plots.layout import Sheet, broken, line_height, text_width
-from bayesmed.plots.picture import FAINT, INK, PAPER, Picture, drawing
+from bayesmed.plots.layout import Sheet, broken, line_height, sheet_width, text_width
+from bayesmed.plots.opened import opened
+from bayesmed.plots.panels import head
+from bayesmed.plots.picture import Picture, colours, drawing, style
 from bayesmed.plots.strokes import Strokes, shape, strokes
 from bayesmed.priors.accept import coerce
 from bayesmed.study.points import Points, points
@@ -30,13 +32,16 @@ LEAST_WEIGHT_SHOWN_WHOLE = 0.12
 
 
 def plot_effect_by_rho(
-    result: FitResult,
+    fit: Any,
     beliefs: Mapping[str, Any],
     at: Any = None,
     claim: Claim | None = None,
     ci_prob: float = 0.95,
     rho: Sequence[float] | None = None,
     title: str | None = None,
+    theme: Any = "blue",
+    labels: Mapping[str, str] | None = None,
+    ax: Any = None,
 ) -> Picture:
     """Draw how the claim's effect moves with rho at each moderator point, above the beliefs about rho.
 
@@ -46,7 +51,7 @@ def plot_effect_by_rho(
 
     Parameters
     ----------
-    result : FitResult
+    fit : Fit
     beliefs : dict of str to prior
     at : dict, optional
         Moderator points; their defaults if left out.
@@ -57,11 +62,17 @@ def plot_effect_by_rho(
         Where the strokes stand; -0.9, -0.8, …, 0.9 if left out.
     title : str, optional
         In place of the usual one.
+    theme : {"blue", "black", "dark"} or Theme
+    labels : dict of str to str, optional
+        Words in place of names of beliefs, moderators, mediator and outcome.
+    ax : matplotlib.axes.Axes, optional
+        Whose place the picture takes; it says how large it must be.
 
     Returns
     -------
     Picture
     """
+    result = opened(fit, FitResult, "plot_effect_by_rho: fit= must be a Fit")
     if not isinstance(beliefs, Mapping) or not beliefs:
         raise ArgumentError(f"beliefs={beliefs!r} must be a dict of label → prior with at least one belief")
     accepted = {str(label): coerce(belief) for label, belief in beliefs.items()}
@@ -73,11 +84,12 @@ def plot_effect_by_rho(
         f"({observed.contrast[0]} → {observed.contrast[1]}) on {observed.outcome_name}, by what is believed "
         "about ρ"
     )
-    axis = f"ρ, residual correlation of {observed.mediator_name} and {observed.outcome_name}"
-    unit = f"effect, units of {observed.outcome_name}"
-    with drawing():
+    with drawing(theme, labels, ax):
+        named = style().named
+        mediator, outcome = named(observed.mediator_name), named(observed.outcome_name)
+        axis, unit = f"ρ, residual correlation of {mediator} and {outcome}", f"effect, units of {outcome}"
         figure = _draw(made, accepted, chosen, stated, width, title or usual, axis, unit)
-    return Picture(figure, title or usual, _text(made, accepted, chosen, stated, width))
+        return Picture(figure, title or usual, _text(made, accepted, chosen, stated, width), colours().paper)
 
 
 def _draw(
@@ -93,13 +105,14 @@ def _draw(
     count = len(chosen.values)
     columns = count if count <= 3 else 2 if count == 4 else 3
     rows = -(-count // columns)
-    column_width = (WIDTH - LEFT - RIGHT - GAP * (columns - 1)) / columns
-    title_lines = broken(title, TITLE_SIZE, WIDTH - 0.4, "bold")
-    heads = [broken(point_text(point), HEAD_SIZE, column_width, "bold") for point in chosen.values]
+    sheet_across = sheet_width(WIDTH, WIDTH)
+    column_width = (sheet_across - LEFT - RIGHT - GAP * (columns - 1)) / columns
+    title_lines = broken(title, TITLE_SIZE, sheet_across - 0.4, "bold")
+    heads = [broken(head(point), HEAD_SIZE, column_width, "bold") for point in chosen.values]
     head_rows = [max(len(h) for h in heads[r * columns : (r + 1) * columns]) for r in range(rows)]
-    labels = [broken(label, SIZE, LEFT - 0.35) for label in beliefs]
+    labels = [broken(style().named(label), SIZE, LEFT - 0.35) for label in beliefs]
     strip_heights = [max(STRIP_HEIGHT, len(lines) * line_height(SIZE) + 0.1) for lines in labels]
-    axis_lines = broken(axis, SIZE, WIDTH - LEFT - RIGHT)
+    axis_lines = broken(axis, SIZE, sheet_across - LEFT - RIGHT)
 
     title_top = 0.15
     key_top = title_top + len(title_lines) * line_height(TITLE_SIZE) + 0.1
@@ -110,7 +123,7 @@ def _draw(
         top += PANEL_HEIGHT + 0.3
     strip_top = top + line_height(SIZE)
     bottom = strip_top + sum(strip_heights)
-    sheet = Sheet(WIDTH, bottom + 0.28 + len(axis_lines) * line_height(SIZE) + 0.12)
+    sheet = Sheet(sheet_across, bottom + 0.28 + len(axis_lines) * line_height(SIZE) + 0.12)
 
     sheet.write(title_lines, 0.2, title_top, TITLE_SIZE, weight="bold")
     _key(sheet, key_top, claim, ci_prob)
@@ -123,7 +136,9 @@ def _draw(
         panel = sheet.axes(lefts[column], panel_tops[row], column_width, PANEL_HEIGHT)
         _panel(panel, made, k, claim, limits, show_values=column == 0)
         if column == 0:
-            panel.set_ylabel(unit if text_width(unit, SMALL) < PANEL_HEIGHT else "effect", fontsize=SMALL, color=INK)
+            panel.set_ylabel(
+                unit if text_width(unit, SMALL) < PANEL_HEIGHT else "effect", fontsize=SMALL, color=colours().ink
+            )
     beside = LEFT - 0.12
     sheet.write("beliefs about ρ", beside, strip_top - line_height(SIZE), SIZE, style="italic", ha="right")
     top = strip_top
@@ -149,21 +164,22 @@ def _panel(
     from matplotlib.ticker import FuncFormatter, MaxNLocator
 
     axes.set_ylim(*limits)
-    axes.axhline(claim.limit, color=INK, linewidth=0.8, linestyle=(0, (5, 3)), zorder=1)
+    axes.axhline(claim.limit, color=colours().ink, linewidth=0.8, linestyle=(0, (5, 3)), zorder=1)
     inches = axes.get_window_extent().width / axes.figure.dpi
     per_unit = inches / (made.edges[-1] - made.edges[0])
     for j, rho in enumerate(made.rho):
         low, quarter, median, three_quarters, high = made.quantiles[k, j]
         weight, room = made.weight[j], 0.82 * (made.edges[j + 1] - made.edges[j])
         reached = made.probability[k, j] >= claim.required
-        axes.plot([rho, rho], [low, high], color=_shade(weight), linewidth=0.5 + 1.3 * weight, zorder=2,
+        axes.plot([rho, rho], [low, high], color=colours().shade(2 * weight), linewidth=0.5 + 1.3 * weight, zorder=2,
                   solid_capstyle="butt")  # fmt: skip
         wide = room * weight
         if wide * per_unit * 72 < 1.0:
             continue
-        axes.bar(rho, three_quarters - quarter, wide, bottom=quarter, facecolor=INK if reached else PAPER,
-                 edgecolor=INK, linewidth=0.8, zorder=3)  # fmt: skip
-        axes.plot([rho - wide / 2, rho + wide / 2], [median, median], color=PAPER if reached else INK,
+        ink, paper = colours().ink, colours().paper
+        axes.bar(rho, three_quarters - quarter, wide, bottom=quarter, facecolor=ink if reached else paper,
+                 edgecolor=ink, linewidth=0.8, zorder=3)  # fmt: skip
+        axes.plot([rho - wide / 2, rho + wide / 2], [median, median], color=paper if reached else ink,
                   linewidth=1.1, zorder=4, solid_capstyle="butt")  # fmt: skip
     _rho_axis(axes, made)
     axes.spines[["top", "right"]].set_visible(False)
@@ -175,11 +191,13 @@ def _panel(
 def _belief(axes: "Axes", belief: Any, made: Strokes) -> None:
     """Draw one belief's shape: a hatched hill, and a stem with a dot for a value of its own."""
     edges, height, atoms = shape(belief, made.edges[0], made.edges[-1])
-    axes.stairs(0.8 * height, edges, fill=True, facecolor="#cfd6dd", edgecolor=INK, linewidth=0.8, hatch="////")
+    axes.stairs(
+        0.8 * height, edges, fill=True, facecolor=colours().wash, edgecolor=colours().ink, linewidth=0.8, hatch="////"
+    )
     for value, probability in atoms:
-        axes.plot([value, value], [0, 0.75 * probability], color=INK, linewidth=1.6)
-        axes.plot([value], [0.75 * probability], marker="o", markersize=3.5, color=INK)
-    axes.axvline(0, color=FAINT, linewidth=0.5, zorder=0)
+        axes.plot([value, value], [0, 0.75 * probability], color=colours().ink, linewidth=1.6)
+        axes.plot([value], [0.75 * probability], marker="o", markersize=3.5, color=colours().ink)
+    axes.axvline(0, color=colours().faint, linewidth=0.5, zorder=0)
     axes.set_xlim(made.edges[0], made.edges[-1])
     axes.set_ylim(0, 1)
     axes.set_xticks([])
@@ -203,8 +221,8 @@ def _key(sheet: Sheet, top: float, claim: Claim, ci_prob: float) -> None:
     axes.set_ylim(2 * step, 0)
     axes.axis("off")
     verdicts = (
-        (INK, PAPER, f"filled: at this ρ, {claim} has probability {claim.required:g} or more"),
-        (PAPER, INK, "open: less than that"),
+        (colours().ink, colours().paper, f"filled: at this ρ, {claim} has probability {claim.required:g} or more"),
+        (colours().paper, colours().ink, "open: less than that"),
     )
     left = 0.2
     for face, notch, words in verdicts:
@@ -212,11 +230,11 @@ def _key(sheet: Sheet, top: float, claim: Claim, ci_prob: float) -> None:
         axes.plot([left, left + 0.16], [0.13, 0.13], color=notch, linewidth=1.1)
         sheet.write(words, left + glyph, top + 0.06, SIZE)
         left += glyph + text_width(words, SIZE) + 0.35
-    axes.plot([left, left + 0.3], [0.13, 0.13], color=INK, linewidth=0.8, linestyle=(0, (5, 3)))
+    axes.plot([left, left + 0.3], [0.13, 0.13], color=colours().ink, linewidth=0.8, linestyle=(0, (5, 3)))
     sheet.write(f"limit {claim.limit:g}", left + 0.38, top + 0.06, SIZE)
     left = 0.2
     for k, wide in enumerate((0.03, 0.08, 0.14)):
-        axes.add_patch(_block(left + 0.17 * k, step + 0.06, wide, 0.14, FAINT))
+        axes.add_patch(_block(left + 0.17 * k, step + 0.06, wide, 0.14, colours().faint))
     words = (
         f"width: how much the beliefs together make of this ρ; line {100 * ci_prob:g} %, block 50 % "
         "interval, notch median"
@@ -227,14 +245,7 @@ def _key(sheet: Sheet, top: float, claim: Claim, ci_prob: float) -> None:
 def _block(left: float, top: float, width: float, height: float, face: str) -> Any:
     from matplotlib.patches import Rectangle
 
-    return Rectangle((left, top), width, height, facecolor=face, edgecolor=INK, linewidth=0.8)
-
-
-def _shade(weight: float) -> str:
-    """Return a grey from faint to full ink."""
-    strong, weak = (0x16, 0x32, 0x4F), (0xC4, 0xCA, 0xD0)
-    share = min(1.0, float(weight) * 2)
-    return "#" + "".join(f"{round(w + share * (s - w)):02x}" for s, w in zip(strong, weak, strict=True))
+    return Rectangle((left, top), width, height, facecolor=face, edgecolor=colours().ink, linewidth=0.8)
 
 
 def _vertical_limits(made: Strokes, claim: Claim) -> tuple[float, float]:
@@ -254,7 +265,7 @@ def _text(made: Strokes, beliefs: Mapping[str, Any], chosen: Points, claim: Clai
         f"{LEAST_WEIGHT_SHOWN_WHOLE:g} in weight may leave the frame."
     ]
     for k, point in enumerate(chosen.values):
-        lines += ["", f"{point_text(point)}:"]
+        lines += ["", f"{head(point)}:"]
         for j, rho in enumerate(made.rho):
             low, _, median, _, high = (number_text(float(v)) for v in made.quantiles[k, j])
             lines.append(
@@ -262,7 +273,7 @@ def _text(made: Strokes, beliefs: Mapping[str, Any], chosen: Points, claim: Clai
                 f"{probability_text(float(made.probability[k, j]))}, weight {made.weight[j]:.2f}"
             )
     lines += ["", "Beliefs about ρ: median and 90 % interval:"]
-    lines += [f"  {label}: {_in_numbers(belief)}" for label, belief in beliefs.items()]
+    lines += [f"  {style().named(label)}: {_in_numbers(belief)}" for label, belief in beliefs.items()]
     return "\n".join(lines)
 
 

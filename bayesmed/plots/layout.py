@@ -3,7 +3,8 @@
 from functools import cache
 from typing import TYPE_CHECKING, Any
 
-from bayesmed.plots.picture import FONT, INK
+from bayesmed.core.errors import ArgumentError
+from bayesmed.plots.picture import FONT, colours, style
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -48,46 +49,82 @@ def broken(text: str, size: float, width: float, weight: str = "normal") -> list
     return [*lines, line] if line or not lines else lines
 
 
+def sheet_width(usual: float, least: float = 5.0) -> float:
+    """Return the width in inches to draw on: that of the axes asked for, or the usual one.
+
+    Raises
+    ------
+    ArgumentError
+        If the axes are narrower than `least` inches.
+    """
+    ax = style().ax
+    if ax is None:
+        return usual
+    width = float(ax.get_window_extent().width / ax.figure.dpi)
+    if width < least:
+        raise ArgumentError(f"ax: the axes are {width:.1f} inches wide; this picture needs at least {least:g}")
+    return width
+
+
 class Sheet:
-    """A figure on which things are placed in inches from its left and top.
+    """A figure, or the place of the axes asked for, on which things are placed in inches from left and top.
 
     Parameters
     ----------
     width, height : float
         In inches.
+
+    Raises
+    ------
+    ArgumentError
+        If the axes asked for are too small.
     """
 
     def __init__(self, width: float, height: float) -> None:
         from matplotlib.figure import Figure
 
         self.width, self.height = width, height
-        self.figure: Figure = Figure(figsize=(width, height))
+        ax = style().ax
+        self._left = self._above = 0.0
+        if ax is None:
+            self.figure: Any = Figure(figsize=(width, height), facecolor=colours().paper)
+            self._whole = width, height
+            return
+        self.figure = ax.figure
+        box, figure = ax.get_window_extent(), ax.figure.bbox
+        inches = box.height / ax.figure.dpi
+        if inches < height - 0.01:
+            raise ArgumentError(
+                f"ax: the axes are {inches:.1f} inches high; this picture needs {height:.1f} at a width of {width:.1f}"
+            )
+        self._left = (box.x0 - figure.x0) / ax.figure.dpi
+        self._above = (figure.y1 - box.y1) / ax.figure.dpi
+        self._whole = figure.width / ax.figure.dpi, figure.height / ax.figure.dpi
+        ax.set_axis_off()
 
     def axes(self, left: float, top: float, width: float, height: float) -> "Axes":
         """Return bare axes whose upper left corner is at (left, top)."""
-        box = (
-            left / self.width,
-            1 - (top + height) / self.height,
-            width / self.width,
-            height / self.height,
-        )
-        made = self.figure.add_axes(box)
+        whole_width, whole_height = self._whole
+        corner = (self._left + left) / whole_width, 1 - (self._above + top + height) / whole_height
+        box = (*corner, width / whole_width, height / whole_height)
+        made: Axes = self.figure.add_axes(box)
         made.patch.set_visible(False)
-        made.tick_params(labelsize=7.5, length=2.5, width=0.6, color=INK, labelcolor=INK)
+        ink = colours().ink
+        made.tick_params(labelsize=7.5, length=2.5, width=0.6, color=ink, labelcolor=ink)
         for side in made.spines.values():
-            side.set(linewidth=0.6, edgecolor=INK)
+            side.set(linewidth=0.6, edgecolor=ink)
         return made
 
     def write(self, lines: list[str] | str, left: float, top: float, size: float, **options: Any) -> None:
         """Write lines of text, the first one's upper edge at `top`; never read as mathematics."""
-        usual: dict[str, Any] = {"fontsize": size, "color": INK, "family": [FONT], "parse_math": False}
+        usual: dict[str, Any] = {"fontsize": size, "color": colours().ink, "family": [FONT], "parse_math": False}
         usual["va"] = "center_baseline"
         for k, line in enumerate([lines] if isinstance(lines, str) else lines):
             if not line:
                 continue
             self.figure.text(
-                left / self.width,
-                1 - (top + (k + 0.5) * line_height(size)) / self.height,
+                (self._left + left) / self._whole[0],
+                1 - (self._above + top + (k + 0.5) * line_height(size)) / self._whole[1],
                 line,
                 **{**usual, **options},
             )

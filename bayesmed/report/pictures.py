@@ -57,7 +57,7 @@ def _effect_by_rho(findings: Findings) -> "Picture | None":
     from bayesmed.plots import effect_by_rho
 
     comparison = findings.comparison
-    if any(isinstance(belief, ByGroup) for belief in comparison.beliefs.values()):
+    if _by_group(findings):
         return None
     at: dict[str, Any] = {**{k: list(v) for k, v in comparison.points.dims.items()}, **comparison.points.scalars}
     return effect_by_rho.plot_effect_by_rho(
@@ -65,9 +65,49 @@ def _effect_by_rho(findings: Findings) -> "Picture | None":
     )
 
 
+def _tipping(findings: Findings) -> "Picture | None":
+    from bayesmed.plots import tipping
+
+    if findings.tipping is None or _by_group(findings):
+        return None
+    return tipping.plot_tipping(findings.tipping, findings.comparison.beliefs)
+
+
+def _yardsticks(findings: Findings) -> "Picture | None":
+    from bayesmed.plots import yardsticks
+
+    if findings.yardsticks is None or findings.yardsticks.table.empty:
+        return None
+    return yardsticks.plot_yardsticks(findings.yardsticks, findings.tipping)
+
+
+def _rho(findings: Findings) -> "Picture | None":
+    from bayesmed.plots import rho
+
+    if not findings.result.joint or not findings.result.settings.learn or _by_group(findings):
+        return None
+    return rho.plot_rho(findings.comparison)
+
+
+def _spread(findings: Findings) -> "Picture | None":
+    from bayesmed.plots import checks
+
+    return checks.plot_spread(findings.result) if findings.audit.spread else None
+
+
+def _by_group(findings: Findings) -> bool:
+    return any(isinstance(belief, ByGroup) for belief in findings.comparison.beliefs.values())
+
+
 MAKERS = (
     Maker(
         "claim_by_belief", "answers", "The claim under every belief, and how far it is from what it requires", _beliefs
     ),
+    Maker("rho", "answers", "What the data made of each belief about rho", _rho),
     Maker("effect_by_rho", "overturning", "The effect at fixed rho, with the beliefs about rho", _effect_by_rho),
+    Maker("tipping", "overturning", "Where the claim tips, above the beliefs about rho", _tipping),
+    Maker(
+        "yardsticks", "overturning", "Causes as strong as measured covariates, beside where the claim tips", _yardsticks
+    ),
+    Maker("spread", "diagnostics", "Residual spread by exposure and moderator: one rho for all needs it even", _spread),
 )

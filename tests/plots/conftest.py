@@ -1,5 +1,6 @@
 """An exact fit of the invented trial, and the texts that a figure really draws."""
 
+import dataclasses
 from collections.abc import Callable
 
 import pytest
@@ -23,6 +24,12 @@ def knee() -> FitResult:
         outcome="function ~ exercise * confidence + coaching + age + body_mass_index",
     )
     return study.fit(method="exact", draws=25, random_seed=1, progressbar=False).result
+
+
+@pytest.fixture(scope="session")
+def nuts(knee: FitResult) -> FitResult:
+    """The same draws as if a sampler had made them, so that there is something to diagnose."""
+    return knee.replaced(settings=dataclasses.replace(knee.settings, method="nuts"))
 
 
 @pytest.fixture

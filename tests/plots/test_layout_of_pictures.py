@@ -9,7 +9,11 @@ from matplotlib.figure import Figure
 from matplotlib.transforms import Bbox
 
 import bayesmed as bm
+from bayesmed import plots
 from bayesmed.conclusions.comparison import compare
+from bayesmed.conclusions.prior_map import prior_map
+from bayesmed.conclusions.tipping import tipping
+from bayesmed.conclusions.yardsticks import yardsticks
 from bayesmed.fit.result import FitResult
 from bayesmed.plots.beliefs import plot_beliefs
 from bayesmed.plots.effect_by_rho import plot_effect_by_rho
@@ -27,6 +31,7 @@ PRIORS = (
     bm.FisherNormal(-0.2, 0.1), bm.TruncatedNormal(0.5, 0.1), bm.Uniform(-0.9, 0.9), bm.StretchedBeta(0.6, 0.6),
     bm.StretchedBeta(4, 2), bm.Uniform(-0.3, 0.3),
 )  # fmt: skip
+KINDS = ["effect_by_rho", "beliefs", "tipping", "prior_map", "yardsticks", "rho"]
 SHORT = [f"b{k}" for k in range(len(PRIORS))]
 LONG = [
     f"belief {k}: what the second reviewer of the grant application wrote about motivation in 2024"
@@ -36,8 +41,20 @@ LONG = [
 
 def picture(kind: str, knee: FitResult, points: int, beliefs: int, labels: list[str], claim: bm.Claim) -> Picture:
     chosen = dict(zip(labels[-beliefs:], PRIORS[:beliefs], strict=True))
-    if kind == "effect_by_rho":
-        return plot_effect_by_rho(knee, chosen, POINTS[points], claim)
+    match kind:
+        case "effect_by_rho":
+            return plot_effect_by_rho(knee, chosen, POINTS[points], claim)
+        case "tipping":
+            return plots.plot_tipping(tipping(knee, POINTS[points], claim), chosen)
+        case "prior_map":
+            mapped = prior_map(knee, at=POINTS[points], claim=claim, mean=[-0.5, 0, 0.5], sd=[0.1, 0.3, 0.6])
+            return plots.plot_prior_map(mapped, chosen)
+        case "yardsticks":
+            names = {"age": labels[-1], "body_mass_index": labels[0]}
+            tips = tipping(knee, POINTS[points], claim)
+            return plots.plot_yardsticks(yardsticks(knee, strength=[0.5, 1, 2][:beliefs]), tips, labels=names)
+        case "rho":
+            return plots.plot_rho(compare(knee, chosen, POINTS[points], claim))
     return plot_beliefs(compare(knee, chosen, POINTS[points], claim))
 
 
@@ -56,7 +73,7 @@ def assert_clean(figure: Figure, boxes: dict[str, list[Bbox]]) -> None:
         assert apart, f"{text!r} overlaps {other!r}"
 
 
-@pytest.mark.parametrize("kind", ["effect_by_rho", "beliefs"])
+@pytest.mark.parametrize("kind", KINDS)
 @pytest.mark.parametrize("points", [1, 3, 8])
 @pytest.mark.parametrize("beliefs", [2, 12])
 @pytest.mark.parametrize("labels", [SHORT, LONG], ids=["short", "long"])
@@ -67,7 +84,7 @@ def test_no_text_overlaps_or_is_cut_off(
     assert_clean(made.figure, drawn(made.figure))
 
 
-@pytest.mark.parametrize("kind", ["effect_by_rho", "beliefs"])
+@pytest.mark.parametrize("kind", KINDS)
 def test_a_long_claim_fits(knee: FitResult, drawn: Drawn, kind: str) -> None:
     made = picture(kind, knee, 3, 2, SHORT, bm.Claim("indirect", below=-12345.678, required=0.975))
     assert_clean(made.figure, drawn(made.figure))
@@ -83,7 +100,7 @@ def test_the_check_itself_sees_an_overlap_and_a_cut(drawn: Drawn) -> None:
             assert_clean(figure, drawn(figure))
 
 
-@pytest.mark.parametrize("kind", ["effect_by_rho", "beliefs"])
+@pytest.mark.parametrize("kind", ["effect_by_rho", "beliefs", "tipping", "prior_map", "rho"])
 def test_every_label_is_drawn_whole_and_never_as_mathematics(knee: FitResult, drawn: Drawn, kind: str) -> None:
     made = picture(kind, knee, 3, 12, LONG, bm.Claim())
     lines = "".join("".join(text.split()) for text in drawn(made.figure))
@@ -98,3 +115,44 @@ def test_a_users_style_does_not_change_what_is_measured(knee: FitResult, drawn: 
     with matplotlib.rc_context({"font.size": 30, "axes.titlesize": 40, "lines.linewidth": 9, "axes.grid": True}):
         made = picture("beliefs", knee, 8, 12, LONG, bm.Claim())
         assert_clean(made.figure, drawn(made.figure))
+
+
+@pytest.mark.parametrize("words", [{}, {"confidence": LONG[0], "exercise": LONG[1], "function": LONG[2]}], ids=len)
+def test_pictures_of_one_fit_are_clean(knee: FitResult, nuts: FitResult, drawn: Drawn, words: dict[str, str]) -> None:
+    along = tipping(knee, {"confidence": [4]}, bm.Claim())
+    for made in (
+        plots.plot_tipping_curve(along, "confidence", labels=words),
+        plots.plot_envelope(knee, bm.AnyOn(-0.3, 0.3), "confidence", values=[2, 5, 8], labels=words),
+        plots.plot_predictions(knee, labels=words),
+        plots.plot_spread(knee, labels=words),
+        plots.plot_sampling(nuts, labels=words),
+    ):
+        assert_clean(made.figure, drawn(made.figure))
+
+
+@pytest.mark.parametrize("kind", ["effect_by_rho", "beliefs", "tipping", "prior_map", "rho"])
+def test_axes_of_the_users_own_are_filled_and_nothing_beside_them(knee: FitResult, drawn: Drawn, kind: str) -> None:
+    figure = Figure(figsize=(14, 16))
+    ax = figure.add_axes((0.1, 0.2, 0.75, 0.7))
+    labels = SHORT[:3]
+    with_axes = dict(zip(labels, PRIORS[:3], strict=True))
+    match kind:
+        case "effect_by_rho":
+            plot_effect_by_rho(knee, with_axes, POINTS[3], ax=ax)
+        case "beliefs":
+            plot_beliefs(compare(knee, with_axes, POINTS[3]), ax=ax)
+        case "tipping":
+            plots.plot_tipping(tipping(knee, POINTS[3], bm.Claim()), with_axes, ax=ax)
+        case "prior_map":
+            plots.plot_prior_map(prior_map(knee, at=POINTS[3], mean=[-0.5, 0, 0.5], sd=[0.1, 0.6]), with_axes, ax=ax)
+        case "rho":
+            plots.plot_rho(compare(knee, with_axes, POINTS[3]), ax=ax)
+    boxes = drawn(figure)
+    assert_clean(figure, boxes)
+    place = ax.get_window_extent()
+    for text, several in boxes.items():
+        for box in several:
+            across = place.x0 - 1 <= box.x0 and box.x1 <= place.x1 + 1
+            assert across, f"{text!r} leaves the axes to a side"
+            assert place.y0 - 1 <= box.y0, f"{text!r} leaves the axes below"
+            assert box.y1 <= place.y1 + 1, f"{text!r} leaves the axes above"

@@ -15,7 +15,7 @@ from bayesmed.conclusions.summary import rho_grid
 from bayesmed.fit.result import FitResult
 from bayesmed.plots.beliefs import plot_beliefs
 from bayesmed.plots.effect_by_rho import plot_effect_by_rho
-from bayesmed.plots.picture import INK
+from bayesmed.plots.picture import THEMES
 from bayesmed.plots.strokes import joint_weight, shape, slice_edges, slice_mass, strokes
 from bayesmed.study.points import points
 
@@ -80,7 +80,7 @@ def test_blocks_are_as_wide_as_weights_and_filled_where_the_claim_reaches_what_i
     assert len(blocks) == shown.sum() > 3
     for block, weight, probability in zip(blocks, made.weight[shown], made.probability[0, shown], strict=True):
         assert block.get_width() == pytest.approx(0.082 * weight)
-        assert to_hex(block.get_facecolor()) == (INK if probability >= 0.95 else "#ffffff")
+        assert to_hex(block.get_facecolor()) == (THEMES["blue"].ink if probability >= 0.95 else "#ffffff")
 
 
 def test_bars_run_from_what_is_required_to_what_there_is(knee: FitResult) -> None:
