@@ -23,7 +23,8 @@ def load_example(name: str) -> "pd.DataFrame":
     ----------
     name : str
         "knee_rehab": 240 invented patients after knee surgery, coached by text message or not. What is
-        true of them stands in ``bayesmed/examples/knee_rehab/make.py``.
+        true of them stands in ``bayesmed/examples/knee_rehab/make.py``. "tutoring": 450 invented pupils in three
+        kinds of school, given hours of tutoring by lottery; see ``bayesmed/examples/tutoring/make.py``.
 
     Returns
     -------

@@ -40,9 +40,9 @@ def test_load_example_is_the_trial() -> None:
 
 
 def test_an_unknown_name_lists_those_there_are() -> None:
-    with pytest.raises(bm.errors.ArgumentError, match=r"'knee' does not exist; there is knee_rehab"):
+    with pytest.raises(bm.errors.ArgumentError, match=r"'knee' does not exist; there is knee_rehab, tutoring"):
         bm.load_example("knee")
-    assert example_names() == ("knee_rehab",)
+    assert example_names() == ("knee_rehab", "tutoring")
 
 
 def test_a_name_cannot_leave_the_folder() -> None:
@@ -51,9 +51,10 @@ def test_a_name_cannot_leave_the_folder() -> None:
 
 
 def test_files_say_that_the_trial_is_invented() -> None:
-    study = example_study_file("knee_rehab")
-    for path in (study, study.with_name("make.py")):
-        assert "INVENTED" in path.read_text(encoding="utf-8")
+    for name in example_names():
+        study = example_study_file(name)
+        for path in (study, study.with_name("make.py")):
+            assert "INVENTED" in path.read_text(encoding="utf-8")
 
 
 def test_the_script_says_the_truth(make: ModuleType) -> None:
