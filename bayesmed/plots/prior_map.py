@@ -129,6 +129,6 @@ def _text(plane: xr.DataArray, points: list[dict[str, Any]], beliefs: dict[str, 
         for label, belief in beliefs.items():
             mean, sd = belief.rho_mean(), belief.rho_sd()
             there = float(at_point.interp(mean=mean, sd=sd)) if sd > 0 else float("nan")
-            shown = probability_text(there) if np.isfinite(there) else "off the map"
-            lines.append(f"  {style().named(label)} (mean {mean:.2f}, SD {sd:.2f}): {shown} at its place")
+            shown = f"{probability_text(there)} at its place" if np.isfinite(there) else "off the map"
+            lines.append(f"  {style().named(label)} (mean {mean:.2f}, SD {sd:.2f}): {shown}")
     return "\n".join(lines)
