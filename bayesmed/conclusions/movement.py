@@ -46,6 +46,11 @@ class Movement:
             f"{self.posterior_sd:.3f}; distance {self.distance:.3f} (Monte Carlo error {self.mcse:.3f}). {self.because}"
         )
 
+    def _repr_html_(self) -> str:
+        from html import escape
+
+        return f"<div><p>{escape(str(self))}</p></div>"
+
 
 def movement(result: FitResult) -> Movement:
     """Return how far rho moved, and why; see ``Fit.movement``."""

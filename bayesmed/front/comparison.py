@@ -1,5 +1,6 @@
 """Comparison: several beliefs about rho side by side."""
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 import pandas as pd
@@ -7,13 +8,13 @@ import pandas as pd
 from bayesmed.conclusions.claim import Claim
 from bayesmed.conclusions.comparison import ComparisonResult
 from bayesmed.conclusions.differences import differences
-from bayesmed.front.shown import as_html, as_text
+from bayesmed.front.shown import Shown
 
 if TYPE_CHECKING:
     from bayesmed.plots.picture import Picture
 
 
-class Comparison:
+class Comparison(Shown):
     """Beliefs compared on the same draws, with verdicts on a claim; made by ``Fit.compare``.
 
     Examples
@@ -79,13 +80,8 @@ class Comparison:
 
         return plot_beliefs(self._result, **options)
 
-    def __repr__(self) -> str:
-        claimed = self._result.claimed.drop(columns="effect")
-        return "\n".join([self._heading(), "", as_text(claimed), "", *self.shifts, *self._routes()])
-
-    def _repr_html_(self) -> str:
-        said = [self._heading(), *self.shifts, *self._routes()]
-        return as_html("\n".join(said), self._result.claimed.drop(columns="effect"))
+    def _parts(self) -> tuple[str, pd.DataFrame, Sequence[str]]:
+        return self._heading(), self._result.claimed.drop(columns="effect"), [*self.shifts, *self._routes()]
 
     def _routes(self) -> list[str]:
         """Say what became of each belief about rho where the data inform it."""

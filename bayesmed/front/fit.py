@@ -25,7 +25,7 @@ from bayesmed.conclusions.varying import covariance_tipping, with_covariance
 from bayesmed.conclusions.yardsticks import Covariates, strength_draws, yardsticks
 from bayesmed.fit.result import FitResult
 from bayesmed.front.comparison import Comparison
-from bayesmed.front.shown import as_html, as_text
+from bayesmed.front.shown import Shown, as_html
 from bayesmed.front.study import Study
 from bayesmed.front.tipping import Tipping
 from bayesmed.front.yardsticks import Yardsticks
@@ -35,7 +35,7 @@ if TYPE_CHECKING:
     from bayesmed.report.page import Page
 
 
-class Fit:
+class Fit(Shown):
     """Posterior draws of a study; made by ``Study.fit``, ``Study.adopt`` or ``bayesmed.load``.
 
     Where the likelihood is silent on rho, the same draws serve every belief about rho. In all conclusions:
@@ -332,9 +332,9 @@ class Fit:
 
         return save(self.result, path, rows=rows)
 
-    def __repr__(self) -> str:
+    def _parts(self) -> tuple[str, pd.DataFrame, Sequence[str]]:
         sentence, table = self._answer()
-        return "\n".join([repr(self.study), f"  draws              {self.how}", "", sentence, as_text(table)])
+        return "\n".join([repr(self.study), f"  draws              {self.how}", "", sentence]), table, ()
 
     def _repr_html_(self) -> str:
         sentence, table = self._answer()

@@ -1,5 +1,7 @@
-"""Tables as people read them: rounded to what the draws warrant, as text and as escaped HTML."""
+"""Tables as people read them: rounded to what the draws warrant, in text, in a notebook and in a rich terminal."""
 
+from abc import ABC, abstractmethod
+from collections.abc import Sequence
 from typing import Any
 
 import numpy as np
@@ -44,6 +46,37 @@ def as_html(sentence: str, table: pd.DataFrame) -> str:
     body = shown(table).to_html(index=False, escape=True, border=0, justify="left")
     paragraphs = "".join(f"<p>{escape(line)}</p>" for line in sentence.splitlines() if line)
     return f"<div>{paragraphs}{body}</div>"
+
+
+class Shown(ABC):
+    """What shows itself by sentences and a table: as text, in a notebook, and in a terminal through rich."""
+
+    @abstractmethod
+    def _parts(self) -> tuple[str, pd.DataFrame, Sequence[str]]:
+        """Return the sentence before the table, the table, and sentences after it."""
+
+    def __repr__(self) -> str:
+        before, table, after = self._parts()
+        return "\n".join([before, "", as_text(table), *(["", *after] if after else [])])
+
+    def _repr_html_(self) -> str:
+        before, table, after = self._parts()
+        return as_html("\n".join([before, *after]), table)
+
+    def __rich__(self) -> Any:
+        from rich.console import Group
+        from rich.table import Table
+        from rich.text import Text
+
+        before, table, after = self._parts()
+        made = Table(box=None, pad_edge=False, header_style="bold", padding=(0, 2, 0, 0))
+        words = shown(table)
+        for name in words.columns:
+            numbers = pd.api.types.is_numeric_dtype(table[name])
+            made.add_column(Text(str(name)), justify="right" if numbers else "left", overflow="fold")
+        for row in words.itertuples(index=False):
+            made.add_row(*(Text(str(cell)) for cell in row))
+        return Group(Text(before), Text(), made, *([Text()] if after else []), *(Text(line) for line in after))
 
 
 def _error_text(error: float) -> str:

@@ -364,20 +364,29 @@ class Study:
         return Fit(adopt(self.observed, tree, rho=rho, belief=None if belief is None else coerce(belief)))
 
     def __repr__(self) -> str:
-        o = self.observed
-        found = ", ".join(m.name for m in o.moderators) or "none"
-        low, high = o.contrast
-        published = o.published is not None
-        rows = f"none; published figures, n = {o.rows.given}" if published else f"{o.rows.used} used of {o.rows.given}"
-        return (
-            f"Study of {o.exposure} ({low} → {high}) through {o.mediator_name} on {o.outcome_name}\n"
-            f"  mediator equation  {o.mediator_formula}\n"
-            f"  outcome equation   {o.outcome_formula}\n"
-            f"  moderators         {found}\n"
-            f"  rows               {rows}"
-        )
+        sentence, facts = self._facts()
+        return "\n".join([sentence, *(f"  {name:<18} {value}" for name, value in facts.items())])
 
     def _repr_html_(self) -> str:
         from html import escape
 
-        return f"<pre>{escape(repr(self))}</pre>"
+        sentence, facts = self._facts()
+        left = "style='text-align:left'"
+        rows = "".join(f"<tr><th {left}>{k}</th><td {left}>{escape(v)}</td></tr>" for k, v in facts.items())
+        return f"<div><p>{escape(sentence)}</p><table>{rows}</table></div>"
+
+    def _facts(self) -> tuple[str, dict[str, str]]:
+        o = self.observed
+        low, high = o.contrast
+        published = o.published is not None
+        return (
+            f"Study of {o.exposure} ({low} → {high}) through {o.mediator_name} on {o.outcome_name}",
+            {
+                "mediator equation": o.mediator_formula,
+                "outcome equation": o.outcome_formula,
+                "moderators": ", ".join(m.name for m in o.moderators) or "none",
+                "rows": f"none; published figures, n = {o.rows.given}"
+                if published
+                else f"{o.rows.used} used of {o.rows.given}",
+            },
+        )

@@ -9,13 +9,13 @@ import xarray as xr
 from bayesmed.conclusions.claim import Claim
 from bayesmed.conclusions.shares import shares
 from bayesmed.conclusions.tipping import CAUTION, TippingResult
-from bayesmed.front.shown import as_html, as_text
+from bayesmed.front.shown import Shown
 
 if TYPE_CHECKING:
     from bayesmed.plots.picture import Picture
 
 
-class Tipping:
+class Tipping(Shown):
     """The tipping distribution of a claim; made by ``Fit.tipping``.
 
     Examples
@@ -90,11 +90,8 @@ class Tipping:
 
         return plot_tipping(self._result, beliefs, **options)
 
-    def __repr__(self) -> str:
-        return "\n".join([self._heading(), "", as_text(self.table), "", CAUTION])
-
-    def _repr_html_(self) -> str:
-        return as_html(f"{self._heading()}\n{CAUTION}", self.table)
+    def _parts(self) -> tuple[str, pd.DataFrame, Sequence[str]]:
+        return self._heading(), self.table, [CAUTION]
 
     def _heading(self) -> str:
         return (

@@ -1,11 +1,12 @@
 """Yardsticks: unmeasured causes beside measured covariates."""
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 import pandas as pd
 
 from bayesmed.conclusions.yardsticks import YardsticksResult
-from bayesmed.front.shown import as_html, as_text
+from bayesmed.front.shown import Shown
 
 if TYPE_CHECKING:
     from bayesmed.plots.picture import Picture
@@ -16,7 +17,7 @@ HEADING = (
 )
 
 
-class Yardsticks:
+class Yardsticks(Shown):
     """Unmeasured causes compared with measured covariates; made by ``Fit.yardsticks``.
 
     Examples
@@ -61,8 +62,5 @@ class Yardsticks:
 
         return plot_yardsticks(self._result, tipping, **options)
 
-    def __repr__(self) -> str:
-        return "\n".join([HEADING, "", as_text(self.table), "", *self.sentences])
-
-    def _repr_html_(self) -> str:
-        return as_html("\n".join([HEADING, *self.sentences]), self.table)
+    def _parts(self) -> tuple[str, pd.DataFrame, Sequence[str]]:
+        return HEADING, self.table, self.sentences

@@ -84,6 +84,14 @@ class ByGroup:
         named = f", moderator={self.moderator!r}" if self.moderator is not None else ""
         return f"ByGroup({dict(self.items)!r}, correlation={self.correlation!r}{named})"
 
+    def _repr_html_(self) -> str:
+        from html import escape
+
+        from bayesmed.priors.shown import as_html
+
+        groups = "".join(f"<p>{escape(str(level))}:</p>{as_html(belief)}" for level, belief in self.items)
+        return f"<div><p>Beliefs by group, tied by a correlation of {self.correlation:g}.</p>{groups}</div>"
+
 
 def as_belief(value: Any) -> Any:
     """Return a ByGroup as it is, and anything else as `coerce` takes it.

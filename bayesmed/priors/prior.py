@@ -159,6 +159,11 @@ class Prior(ABC):
 
         return describe(self, fit)
 
+    def _repr_html_(self) -> str:
+        from bayesmed.priors.shown import as_html
+
+        return as_html(self)
+
     # ------------------------------------------------------------------ what a family supplies
 
     @abstractmethod

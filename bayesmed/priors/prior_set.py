@@ -49,6 +49,15 @@ class PriorSet(ABC):
         The mean of an effect is a line in E[r].
         """
 
+    def _repr_html_(self) -> str:
+        from html import escape
+
+        from bayesmed.priors.shown import short
+
+        lower, upper = self.support()
+        words = f"{short(self)}: a set of beliefs about ρ, all of them between {lower:.3g} and {upper:.3g}."
+        return f"<div><p>{escape(words)}</p></div>"
+
 
 def as_set(value: Any) -> PriorSet:
     """Return `value` if it is a set of beliefs.
