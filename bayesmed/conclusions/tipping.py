@@ -25,6 +25,8 @@ from bayesmed.priors.by_group import ByGroup
 from bayesmed.study.points import Points, points
 
 STEPS = np.linspace(0.02, 0.98, 49)
+FARTHEST = float(STEPS[-1])
+"""How far from zero a fixed correlation is looked for, either way."""
 RANGE = 0.9
 """Correlations beyond this in size are set apart. Common practice, no source."""
 CAUTION = (

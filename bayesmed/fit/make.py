@@ -54,31 +54,6 @@ def fit_study(
     DataWarning
         If a column looks like an identifier and repeats.
     """
-    result = _fitted(observed, rho, method, draws, tune, chains, random_seed, coefficients, learn, progressbar)
-    if result.statistics.informed and learn:
-        message = informed_message(observed, result.statistics, result.coefficients)
-        warn(InformedWarning(message))
-    for identifier in observed.identifiers:
-        message = (
-            f"column {identifier.name!r} looks like an identifier and repeats (a value in up to {identifier.most} "
-            "rows); rows are taken as independent, and intervals are too narrow if they are not"
-        )
-        warn(DataWarning(message))
-    return result
-
-
-def _fitted(
-    observed: Observed,
-    rho: Any,
-    method: Method,
-    draws: int,
-    tune: int,
-    chains: int,
-    random_seed: int | None,
-    coefficients: Coefficients | None,
-    learn: bool,
-    progressbar: bool,
-) -> FitResult:
     if method not in ("nuts", "exact"):
         raise ArgumentError(f"method={method!r} is not known; allowed are 'nuts' and 'exact'")
     _check_counts(draws=(draws, 4), tune=(tune, 1 if method == "nuts" else 0), chains=(chains, 1))
@@ -90,25 +65,24 @@ def _fitted(
     informed = informants(observed, statistics, chosen)
     _check_informed(informed, rho, method)
     settings = Settings(method, draws, tune if method == "nuts" else 0, chains, seed, learn)
-    if isinstance(rho, ByGroup):
-        return _grouped(observed, statistics, rho, settings, chosen, progressbar)
     base = FitResult(observed, statistics, xr.DataTree(), rho, bool(informed), chosen, settings)
-    if method == "exact":
-        if chosen != Coefficients():
-            raise ArgumentError(
-                "method='exact' draws under the reference prior and takes no coefficients=; use method='nuts'"
-            )
-        result = base.replaced(
-            tree=sample_exact(observed.mediator_terms, observed.outcome_terms, statistics, settings), belief=None
+    if isinstance(rho, ByGroup):
+        result = _grouped(base, rho, progressbar)
+    elif informed:
+        result = _joint(base, rho, progressbar)
+    else:
+        # The likelihood is silent on rho: a belief about it needs no sampler.
+        result = _silent(base, progressbar)
+        result = result if rho is None else result.with_belief(rho)
+    if statistics.informed and learn:
+        warn(InformedWarning(informed_message(observed, statistics, chosen)))
+    for identifier in observed.identifiers:
+        message = (
+            f"column {identifier.name!r} looks like an identifier and repeats (a value in up to {identifier.most} "
+            "rows); rows are taken as independent, and intervals are too narrow if they are not"
         )
-        describe(result)
-        return result if rho is None else result.with_belief(rho)
-    if informed:
-        return _joint(base, rho, progressbar)
-    # The likelihood is silent on rho: a belief about it needs no sampler.
-    tree = _silent(statistics, observed.mediator_terms, observed.outcome_terms, settings, chosen, progressbar)
-    result = _finished(base.replaced(tree=tree, belief=None))
-    return result if rho is None else result.with_belief(rho)
+        warn(DataWarning(message))
+    return result
 
 
 def refit(result: FitResult, belief: Any, progressbar: bool = False) -> FitResult:
@@ -162,7 +136,17 @@ def _compiled(base: FitResult, belief: Any) -> Any:
     return base.memory["movable"].with_data(**belief_data(belief))
 
 
-def _silent(
+def _silent(base: FitResult, progressbar: bool) -> FitResult:
+    terms = base.observed.mediator_terms, base.observed.outcome_terms
+    if base.settings.method == "exact" and base.coefficients != Coefficients():
+        raise ArgumentError(
+            "method='exact' draws under the reference prior and takes no coefficients=; use method='nuts'"
+        )
+    tree = _sampled(base.statistics, *terms, base.settings, base.coefficients, progressbar)
+    return _finished(base.replaced(tree=tree, belief=None))
+
+
+def _sampled(
     statistics: Statistics,
     mediator_terms: tuple[str, ...],
     outcome_terms: tuple[str, ...],
@@ -170,32 +154,25 @@ def _silent(
     coefficients: Coefficients,
     progressbar: bool,
 ) -> xr.DataTree:
-    """Sample a study whose data are silent on rho, by the compiled model that most of them share."""
+    """Draw what the data identify where they are silent on rho, by the compiled model that most studies share."""
+    if settings.method == "exact":
+        return sample_exact(mediator_terms, outcome_terms, statistics, settings)
     if shares_a_model(statistics, coefficients):
         return sample_shared(statistics, mediator_terms, outcome_terms, settings, progressbar)
     compiled = compile_model(build_model(statistics, mediator_terms, outcome_terms, None, coefficients))
     return sample_nuts(compiled, settings, progressbar)
 
 
-def _grouped(
-    observed: Observed,
-    statistics: Statistics,
-    belief: ByGroup,
-    settings: Settings,
-    coefficients: Coefficients,
-    progressbar: bool,
-) -> FitResult:
-    if coefficients != Coefficients():
+def _grouped(base: FitResult, belief: ByGroup, progressbar: bool) -> FitResult:
+    if base.coefficients != Coefficients():
         raise ArgumentError(
             "rho: ByGroup fits each group under the default coefficient priors; leave out coefficients="
         )
 
     def sample(part: Statistics, m_terms: tuple[str, ...], y_terms: tuple[str, ...], own: Settings) -> xr.DataTree:
-        if own.method == "exact":
-            return sample_exact(m_terms, y_terms, part, own)
-        return _silent(part, m_terms, y_terms, own, coefficients, progressbar)
+        return _sampled(part, m_terms, y_terms, own, base.coefficients, progressbar)
 
-    result = fit_groups(observed, statistics, belief, settings, sample)
+    result = fit_groups(base.observed, base.statistics, belief, base.settings, sample)
     for part in result.parts.values():
         warn_if_wrong(part)
     describe(result)

@@ -168,6 +168,7 @@ def completed(first: Answer) -> Findings:
     warned = dict(first.warned)
     with _each_warning_once(warned):
         grid = rho_grid(result, None, at, claim, ci_prob)
+        found_tipping = tipping(result, at, claim, ci_prob) if tips else None
         found = Findings(
             title=first.title,
             result=result,
@@ -175,8 +176,8 @@ def completed(first: Answer) -> Findings:
             comparison=comparison,
             own_beliefs=first.own_beliefs,
             grid=grid,
-            reaches=reaches(result, comparison.points, claim, ci_prob, grid),
-            tipping=tipping(result, at, claim, ci_prob) if tips else None,
+            reaches=reaches(claim, grid, found_tipping),
+            tipping=found_tipping,
             yardsticks=_yardsticks(result, at, claim) if tips else None,
             envelope=envelope(result, AnyOn(*ANY_WITHIN), at, claim) if tips else None,
             complaints=complaints_about(result),

@@ -6,13 +6,8 @@ import numpy as np
 import pandas as pd
 
 from bayesmed.conclusions.claim import Claim
-from bayesmed.core.mapping import Array, odds
-from bayesmed.fit.result import FitResult
-from bayesmed.study.points import Points
-
-STEP = 0.01
-FARTHEST = 0.95
-"""How far rho is followed either way."""
+from bayesmed.conclusions.tipping import FARTHEST, TippingResult
+from bayesmed.core.mapping import Array
 
 
 @dataclass(frozen=True)
@@ -24,49 +19,47 @@ class Reach:
     clear_at_zero : bool
         True if at rho = 0 the interval does not hold the limit.
     down, up : float or None
-        The first rho below and above zero, on the grid used, whose interval holds the limit; None where none
-        does as far as `farthest`, or where the interval holds it at zero already.
-    farthest, step : float
-        The last rho looked at, and the distance between those looked at.
+        The first rho below and above zero whose interval holds the limit; None where none does as far as
+        `farthest`, or where the interval holds it at zero already.
+    farthest : float
+        The last rho looked at.
+    step : float or None
+        The distance between those looked at; None where the rho was found and not looked up.
     """
 
     clear_at_zero: bool
     down: float | None
     up: float | None
     farthest: float
-    step: float
+    step: float | None
 
 
-def reaches(result: FitResult, points: Points, claim: Claim, ci_prob: float, grid: pd.DataFrame) -> tuple[Reach, ...]:
-    """Return a :class:`Reach` for each moderator point.
+def reaches(claim: Claim, grid: pd.DataFrame, tipping: TippingResult | None) -> tuple[Reach, ...]:
+    """Return a :class:`Reach` for each moderator point: from the tipping draws, or from the grid where there are none.
 
-    Where the data inform rho the steps are those of `grid`, a table of ``rho_grid``, since each rho needs
-    draws of its own; otherwise they are 0.01 wide.
+    Parameters
+    ----------
+    claim : Claim
+    grid : pandas.DataFrame
+        Of ``rho_grid``.
+    tipping : TippingResult or None
     """
-    count = len(points.values)
-    if result.joint:
-        claimed = grid[grid["effect"] == claim.effect]
-        rho = claimed["rho"].to_numpy()[::count]
-        lower = claimed["lower"].to_numpy().reshape(len(rho), count).T
-        upper = claimed["upper"].to_numpy().reshape(len(rho), count).T
-    else:
-        steps = round(FARTHEST / STEP)
-        rho = np.asarray(np.arange(-steps, steps + 1) * STEP, dtype=np.float64)
-        lower, upper = _intervals(result, points, claim, ci_prob, rho)
-    holds = (lower <= claim.limit) & (claim.limit <= upper)
-    return tuple(_reach(rho, held) for held in holds)
+    if tipping is not None:
+        ends = tipping.table[["interval_down", "interval_up"]].to_numpy()
+        return tuple(_found(float(down), float(up)) for down, up in ends)
+    claimed = grid[grid["effect"] == claim.effect]
+    rho = np.unique(claimed["rho"])
+    lower, upper = (claimed[end].to_numpy().reshape(len(rho), -1).T for end in ("lower", "upper"))
+    return tuple(_looked_up(rho, held) for held in (lower <= claim.limit) & (claim.limit <= upper))
 
 
-def _intervals(result: FitResult, points: Points, claim: Claim, ci_prob: float, rho: Array) -> tuple[Array, Array]:
-    """Return both ends of the interval at each point and rho, each of shape (point, rho)."""
-    constant, slope = result.contrasts(points).line(claim.effect)
-    tail = (1 - ci_prob) / 2
-    ends = [np.quantile(constant - slope * r, [tail, 1 - tail], axis=1) for r in odds(rho)]
-    lower, upper = np.stack(ends, axis=-1)
-    return lower, upper
+def _found(down: float, up: float) -> Reach:
+    if down == 0 or up == 0:
+        return Reach(False, None, None, FARTHEST, None)
+    return Reach(True, None if np.isnan(down) else down, None if np.isnan(up) else up, FARTHEST, None)
 
 
-def _reach(rho: Array, held: Array) -> Reach:
+def _looked_up(rho: Array, held: Array) -> Reach:
     zero = int(np.argmin(np.abs(rho)))
     step, farthest = float(np.round(np.diff(rho).max(), 6)), float(np.round(rho[-1], 6))
     if held[zero]:

@@ -132,11 +132,9 @@ def _reach_words(reach: Reach, effect: str, ci_prob: float, limit: float) -> str
         if rho is None:
             ends.append(f"going {side} it stays clear of it as far as rho = {sign * reach.farthest:g}")
         else:
-            ends.append(f"going {side} it first takes it in at rho = {rho:g}")
-    return (
-        f"the {width} of the {effect} effect is clear of {limit:g} at rho = 0; {listed(ends)} "
-        f"(looked at in steps of {reach.step:g})."
-    )
+            ends.append(f"going {side} it first takes it in at rho = {rho_text(rho)}")
+    steps = "" if reach.step is None else f" (looked at in steps of {reach.step:g})"
+    return f"the {width} of the {effect} effect is clear of {limit:g} at rho = 0; {listed(ends)}{steps}."
 
 
 def _brief_grid(findings: Findings, effect: str) -> Grid:

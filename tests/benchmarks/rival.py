@@ -7,7 +7,12 @@ import pytensor.tensor as pt
 
 
 def compiled_rival(v: np.ndarray, w: np.ndarray, m: np.ndarray, y: np.ndarray):
-    """Return the compiled model: rho uniform between two bounds that are data."""
+    """Return the compiled model."""
+    return nutpie.compile_pymc_model(rival_model(v, w, m, y))
+
+
+def rival_model(v: np.ndarray, w: np.ndarray, m: np.ndarray, y: np.ndarray) -> pm.Model:
+    """Return the model: rho uniform between two bounds that are data."""
     with pm.Model() as model:
         design_m, design_y = pm.Data("v", v), pm.Data("w", w)
         mediator, outcome = pm.Data("m", m), pm.Data("y", y)
@@ -20,4 +25,4 @@ def compiled_rival(v: np.ndarray, w: np.ndarray, m: np.ndarray, y: np.ndarray):
         pm.Normal("mediator", mean, sigma_m, observed=mediator)
         shifted = pt.dot(design_y, beta) + rho * sigma_y / sigma_m * (mediator - mean)
         pm.Normal("outcome", shifted, sigma_y * pt.sqrt(1 - rho**2), observed=outcome)
-    return nutpie.compile_pymc_model(model)
+    return model

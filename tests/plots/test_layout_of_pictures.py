@@ -74,9 +74,11 @@ def assert_clean(figure: Figure, boxes: dict[str, list[Bbox]]) -> None:
 
 
 @pytest.mark.parametrize("kind", KINDS)
-@pytest.mark.parametrize("points", [1, 3, 8])
-@pytest.mark.parametrize("beliefs", [2, 12])
-@pytest.mark.parametrize("labels", [SHORT, LONG], ids=["short", "long"])
+@pytest.mark.parametrize(
+    ("points", "beliefs", "labels"),
+    [(1, 2, SHORT), (1, 12, LONG), (3, 2, LONG), (3, 12, SHORT), (8, 2, SHORT), (8, 12, LONG)],
+    ids=lambda value: value if isinstance(value, int) else "short" if value is SHORT else "long",
+)
 def test_no_text_overlaps_or_is_cut_off(
     knee: FitResult, drawn: Drawn, kind: str, points: int, beliefs: int, labels: list[str]
 ) -> None:

@@ -5,13 +5,13 @@ from markdown_it import MarkdownIt
 
 import bayesmed as bm
 from bayesmed.conclusions.summary import rho_grid
+from bayesmed.conclusions.tipping import tipping
 from bayesmed.fit.result import FitResult
 from bayesmed.priors import panel
 from bayesmed.report.document import document
 from bayesmed.report.findings import Findings, find
 from bayesmed.report.limits import Reach, reaches
 from bayesmed.report.markdown import as_markdown
-from bayesmed.study.points import points
 
 AT = {"confidence": [4, 8]}
 BELIEFS = {"none": 0.0, '<b>bold</b>, "and" | bar': bm.Uniform(0, 0.5), "=SUM(A1)": bm.LKJ(2)}
@@ -21,14 +21,17 @@ def summary_page(found: Findings) -> str:
     return as_markdown(document(found, {}))
 
 
-def test_the_reach_is_where_the_grid_first_holds_the_limit(knee: FitResult) -> None:
-    """At the rho given the interval of the grid at that rho holds the limit; a step nearer to zero it does not."""
+@pytest.mark.parametrize("way", ["tipping", "grid"])
+def test_the_reach_is_where_an_interval_first_holds_the_limit(knee: FitResult, way: str) -> None:
+    """At the rho given the interval at that rho holds the limit; a little nearer to zero it does not."""
     claim = bm.Claim()
-    found = reaches(knee, points(knee.observed, AT), claim, 0.95, rho_grid(knee, None, AT))
+    found = reaches(claim, rho_grid(knee, None, AT), tipping(knee, AT, claim) if way == "tipping" else None)
     for k, reach in enumerate(found):
         assert reach.clear_at_zero
         assert reach.up is not None
-        table = rho_grid(knee, [reach.up - reach.step, reach.up], AT, claim)
+        assert (reach.step is None) == (way == "tipping")
+        past = 2e-6 if reach.step is None else 0.0
+        table = rho_grid(knee, [reach.up - (reach.step or 2e-6), reach.up + past], AT, claim)
         rows = table[table["effect"] == "indirect"].iloc[k :: len(found)]
         assert list(rows["lower"] <= 0) == [False, True]
         assert reach.down is None
@@ -36,8 +39,10 @@ def test_the_reach_is_where_the_grid_first_holds_the_limit(knee: FitResult) -> N
 
 def test_the_reach_of_an_effect_unclear_at_zero(knee: FitResult) -> None:
     claim = bm.Claim("indirect", above=1.0)
-    (low, _) = reaches(knee, points(knee.observed, AT), claim, 0.95, rho_grid(knee, None, AT, claim))
-    assert low == Reach(False, None, None, 0.95, 0.01)
+    grid = rho_grid(knee, None, AT, claim)
+    (found, _), (looked_up, _) = reaches(claim, grid, tipping(knee, AT, claim)), reaches(claim, grid, None)
+    assert found == Reach(False, None, None, 0.98, None)
+    assert looked_up == Reach(False, None, None, 0.9, 0.1)
 
 
 def test_the_page_says_every_verdict_probability_and_belief(knee: FitResult) -> None:
@@ -70,7 +75,7 @@ def test_the_page_names_a_reach(knee: FitResult) -> None:
     found = find(knee, BELIEFS, AT)
     page = summary_page(found)
     for reach in found.reaches:
-        assert f"going up it first takes it in at rho = {reach.up:g}" in page
+        assert f"going up it first takes it in at rho = {reach.up:.2f}" in page
 
 
 def test_without_beliefs_the_documented_set_stands_in_behind_the_fits_own(knee: FitResult) -> None:
