@@ -188,7 +188,7 @@ def _typed_batches(source: Batches, names: Sequence[str]) -> Iterator[tuple[set[
         lacking = [name for name in names if name not in found.names]
         if lacking:
             raise DataError(f"data: a batch has no column '{lacking[0]}', which the first one has.")
-        frame = found.select(names).reset_index(drop=True)
+        frame = pd.DataFrame({name: found.column(name) for name in names}).reset_index(drop=True)
         text = {name for name in names if text_column(frame[name])}
         yield text, {name: typed_column(name, frame[name]) for name in names}
 

@@ -28,11 +28,12 @@ class Given:
     rows: int
     _source: Any
 
-    def select(self, names: Sequence[str]) -> pd.DataFrame:
-        """Return the columns `names` as a new pandas frame."""
+    def column(self, name: str) -> pd.Series[Any]:
+        """Return a column, which may share its values with the data given."""
         if isinstance(self._source, pd.DataFrame):
-            return self._source.loc[:, list(names)].copy()
-        return pd.DataFrame(self._source.select(list(names)).to_pandas())
+            return self._source[name]
+        column: pd.Series[Any] = self._source.select([name]).to_pandas()[name]
+        return column
 
 
 @dataclass(frozen=True)
@@ -119,9 +120,10 @@ def complete(source: Given, names: Sequence[str]) -> Complete:
     DataError
         If a column has a type or value that cannot be used, or no row is complete.
     """
-    frame = source.select(names)
-    text = frozenset(name for name in names if text_column(frame[name]))
-    typed = {name: typed_column(name, frame[name]) for name in names}
+    # Column by column, so that no more than one copy of the rows is ever held.
+    given = {name: source.column(name) for name in names}
+    text = frozenset(name for name, column in given.items() if text_column(column))
+    typed = {name: typed_column(name, column) for name, column in given.items()}
     missing = {name: int(column.isna().sum()) for name, column in typed.items()}
     missing = {name: count for name, count in missing.items() if count}
     whole = ~np.logical_or.reduce([np.asarray(column.isna()) for column in typed.values()])
@@ -134,9 +136,9 @@ def complete(source: Given, names: Sequence[str]) -> Complete:
         for name, column in typed.items()
         if isinstance(column.dtype, pd.CategoricalDtype)
     }
-    used = len(positions)
+    used, index = len(positions), next(iter(given.values())).index[positions]
     return Complete(
-        pd.DataFrame({name: column.array for name, column in kept.items()}, index=frame.index[positions]),
+        pd.DataFrame({name: column.array for name, column in kept.items()}, index=index, copy=False),
         positions,
         RowsUsed(source.rows, used, source.rows - used, missing),
         text,

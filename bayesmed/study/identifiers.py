@@ -57,7 +57,7 @@ def identifiers(
         if name in used:
             continue
         named = _named(name)
-        column = source.select([name])[name]
+        column = source.column(name)
         if not (named or _could_be(column)):
             continue
         column = column.iloc[positions].dropna()

@@ -134,3 +134,14 @@ def test_a_lazy_frame_is_refused_with_what_to_do(frame):
     lazy = nw.from_native(frame).lazy()
     with pytest.raises(DataError, match="collect"):
         observed(lazy)
+
+
+def test_the_study_keeps_its_rows_when_the_data_change_afterwards():
+    data = pd.DataFrame({"x": [0.0, 1, 0, 1, 0, 1], "m": [1.0, 2, 2, 3, 1, 4], "y": [1.0, 2, 3, 4, 5, 7]})
+    study = observed(data, "y ~ m + x", mediator="m ~ x")
+    before = study.frame.copy()
+    for values in (data["m"].to_numpy(copy=False), data["y"].to_numpy(copy=False)):
+        if values.flags.writeable:
+            values[:] = -1
+    data.loc[:, "x"] = 5.0
+    pd.testing.assert_frame_equal(study.frame, before)
