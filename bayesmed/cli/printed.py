@@ -7,7 +7,7 @@ from textwrap import wrap
 from typing import TYPE_CHECKING
 
 from bayesmed.conclusions.comparison import ComparisonResult
-from bayesmed.conclusions.words import number_text, point_text, probability_text
+from bayesmed.conclusions.words import harmless, number_text, point_text, probability_text
 from bayesmed.study.audit import Audit
 from bayesmed.study.findings import Finding
 
@@ -84,7 +84,7 @@ def print_comparison(console: "Console", comparison: ComparisonResult) -> None:
                 f"{row['mcse']:.0e}" if 0 < row["mcse"] < 0.001 else f"{row['mcse']:.3f}",
                 str(row["verdict"]),
             )
-            table.add_row(*(Text(" ".join(cell.split())) for cell in cells))
+            table.add_row(*(Text(harmless(" ".join(cell.split()))) for cell in cells))
         print_words(console, "")
         print_heading(console, point_text(point))
         console.print(table)
@@ -106,7 +106,7 @@ def print_audit(console: "Console", audit: Audit) -> None:
 
 def print_words(console: "Console", words: str, indent: str = "") -> None:
     """Print words as they are, wrapped between words, the lines after the first behind `indent`."""
-    for paragraph in words.split("\n"):
+    for paragraph in harmless(words).split("\n"):
         lines = wrap(paragraph, console.width, subsequent_indent=indent, break_long_words=False) or [""]
         print("\n".join(lines))
 
@@ -115,7 +115,7 @@ def print_heading(console: "Console", words: str) -> None:
     """Print words, in bold where there is a terminal."""
     from rich.text import Text
 
-    for line in wrap(words, console.width) or [""]:
+    for line in wrap(harmless(words), console.width) or [""]:
         console.print(Text(line, style="bold"))
 
 

@@ -41,10 +41,12 @@ def mean_with_error(values: Array, result: FitResult, weights: Array | None = No
     mean = np.average(values, axis=1, weights=weights)
     scaled = influence(values, mean, weights)
     ess = effective_draws(scaled, result)
-    centred = scaled - scaled.mean(axis=1, keepdims=True)
-    error = np.sqrt(np.einsum("ij,ij->i", centred, centred) / values.shape[1] / ess)
-    unanimous = values.max(axis=1) == values.min(axis=1)
-    return mean, np.where(unanimous, 1 / ess, error)
+    centred = scaled - (mean if weights is None else scaled.mean(axis=1))[:, None]
+    spread = np.sqrt(np.einsum("ij,ij->i", centred, centred) / values.shape[1])
+    # Draws that all agree differ from their mean by rounding alone.
+    unanimous = spread < 1e-9
+    unanimous[unanimous] = np.ptp(values[unanimous], axis=1) == 0
+    return mean, np.where(unanimous, 1 / ess, spread / np.sqrt(ess))
 
 
 def influence(values: Array, mean: Array, weights: Array | None) -> Array:

@@ -12,7 +12,7 @@ from bayesmed.core.contrasts import Contrasts
 from bayesmed.core.errors import ArgumentError, BeliefNeededError
 from bayesmed.core.mapping import Array
 from bayesmed.core.quantiles import effect_quantiles, ordered_quantiles
-from bayesmed.core.tipping import claim_probability
+from bayesmed.core.tipping import lines_probability
 from bayesmed.fit.grouped import GroupedResult, chosen_points
 from bayesmed.fit.make import refit
 from bayesmed.fit.result import FitResult
@@ -66,7 +66,7 @@ class View:
 
     def depends_on_rho(self, effect: str) -> bool:
         """False if an effect's draws are the same whatever is believed about rho."""
-        return self.weights is not None or bool(np.any(self.contrasts.moments(effect).signs != 0))
+        return self.weights is not None or bool(np.any(self.contrasts.lines(effect).moments.signs != 0))
 
     def probability(self, effect: str, claim: Claim) -> tuple[Array, Array]:
         """Return the probability that an effect is beyond the claim's limit, and its Monte Carlo error.
@@ -78,8 +78,7 @@ class View:
     def probability_by_draw(self, effect: str, claim: Claim) -> Array:
         """Return, per point and draw, the belief's probability that the claim's statement is true."""
         if self.integrates:
-            constant, slope = self.contrasts.line(effect)
-            return claim_probability(constant, slope, claim.limit, claim.direction, self.belief)
+            return lines_probability(self.contrasts.lines(effect), claim.limit, claim.direction, self.belief)
         return claim.true_of(self.draws(effect))
 
     @property
@@ -98,7 +97,7 @@ class View:
     def moments(self, effect: str) -> tuple[Array, Array]:
         """Return posterior mean and SD, each of shape (point,); infinite where they are."""
         if self.rho is None:
-            return self.contrasts.moments(effect).under(self.belief)
+            return self.contrasts.lines(effect).moments.under(self.belief)
         values = self.draws(effect)
         mean = np.average(values, axis=1, weights=self.weights)
         return mean, np.sqrt(np.average((values - mean[:, None]) ** 2, axis=1, weights=self.weights))
@@ -106,7 +105,7 @@ class View:
     def quantiles(self, effect: str, probabilities: Array) -> Array:
         """Return posterior quantiles, shape (point, quantile)."""
         if self.integrates and self.depends_on_rho(effect):
-            return effect_quantiles(*self.contrasts.line(effect), self.belief, probabilities, self.result.uniforms)
+            return effect_quantiles(self.contrasts.lines(effect), self.belief, probabilities, self.result.uniforms)
         return self._quantiles_of(self.draws(effect), probabilities)
 
     def _rho(self) -> Array | float:

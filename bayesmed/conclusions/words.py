@@ -1,9 +1,12 @@
 """Numbers and lists as words: no digit that the draws do not warrant, no probability of exactly one."""
 
+import re
 from collections.abc import Iterable, Mapping
 from typing import Any
 
 import numpy as np
+
+STEERING = re.compile(r"[\x00-\x08\x0b-\x1f\x7f-\x9f\u202a-\u202e\u2066-\u2069]")
 
 
 def probability_text(probability: float, mcse: float = 0.0) -> str:
@@ -55,3 +58,8 @@ def listed(items: Iterable[str]) -> str:
     """Return "a", "a and b", or "a, b and c"."""
     found = list(items)
     return found[0] if len(found) == 1 else ", ".join(found[:-1]) + " and " + found[-1] if found else ""
+
+
+def harmless(text: str) -> str:
+    """Return text in which what would command a terminal, or turn the direction of writing, is spelt out."""
+    return STEERING.sub(lambda found: ascii(found.group())[1:-1], text)

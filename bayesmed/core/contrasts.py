@@ -17,7 +17,7 @@ from functools import cached_property
 
 import numpy as np
 
-from bayesmed.core.line_moments import LineMoments, line_moments
+from bayesmed.core.lines import Lines
 from bayesmed.core.mapping import Array, odds
 
 EFFECTS = ("indirect", "direct", "total", "pure_indirect", "total_direct")
@@ -73,8 +73,7 @@ class Contrasts:
     b: Array
     t: Array
     kappa: Array
-    _kept: dict[str, tuple[Array, Array]] = field(default_factory=dict, init=False, repr=False, compare=False)
-    _moments: dict[str, LineMoments] = field(default_factory=dict, init=False, repr=False, compare=False)
+    _kept: dict[str, Lines] = field(default_factory=dict, init=False, repr=False, compare=False)
 
     @cached_property
     def effects(self) -> tuple[str, ...]:
@@ -100,16 +99,15 @@ class Contrasts:
         return np.asarray(constant - slope * odds(np.asarray(rho, dtype=float)))
 
     def line(self, name: str) -> tuple[Array, Array]:
-        """Return ``(c, k)``, each of shape (point, draw), with an effect of ``c - k r``; kept for the next call."""
-        if name not in self._kept:
-            self._kept[name] = self._line(name)
-        return self._kept[name]
+        """Return ``(c, k)``, each of shape (point, draw), such that the effect is ``c - k r``."""
+        lines = self.lines(name)
+        return lines.constant, lines.slope
 
-    def moments(self, name: str) -> LineMoments:
-        """Return the moments of an effect's line over draws; kept for the next call."""
-        if name not in self._moments:
-            self._moments[name] = line_moments(*self.line(name))
-        return self._moments[name]
+    def lines(self, name: str) -> Lines:
+        """Return an effect as lines; kept for the next call."""
+        if name not in self._kept:
+            self._kept[name] = Lines(*self._line(name))
+        return self._kept[name]
 
     def _line(self, name: str) -> tuple[Array, Array]:
         bias = self.kappa * self.b

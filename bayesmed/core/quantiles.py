@@ -5,6 +5,7 @@ from typing import Any
 import numpy as np
 
 from bayesmed.core.belief_table import BeliefTable, belief_table
+from bayesmed.core.lines import Lines
 from bayesmed.core.mapping import Array, odds
 from bayesmed.core.tipping import Belief, claim_probability
 
@@ -18,7 +19,7 @@ LEADS = {1: np.array([1]), 2: np.array([-1, 2]), 3: np.array([1, -3, 3]), 4: np.
 """Weights of values that lie evenly, by their number, which give where the polynomial through them leads next."""
 
 
-def effect_quantiles(constant: Array, slope: Array, belief: Belief, probabilities: Array, uniforms: Array) -> Array:
+def effect_quantiles(lines: Lines, belief: Belief, probabilities: Array, uniforms: Array) -> Array:
     """Return quantiles of the effect over draws and belief, by inverting its distribution function.
 
     The distribution function is the one behind ``claim_probability``, so an interval and a probability
@@ -26,7 +27,7 @@ def effect_quantiles(constant: Array, slope: Array, belief: Belief, probabilitie
 
     Parameters
     ----------
-    constant, slope : array, shape (point, draw)
+    lines : Lines
         Points that lie evenly along a moderator take the least time.
     belief : Belief
     probabilities : array, shape (quantile,)
@@ -37,20 +38,19 @@ def effect_quantiles(constant: Array, slope: Array, belief: Belief, probabilitie
     -------
     array, shape (point, quantile)
     """
-    if belief.atoms():
+    constant, slope = lines.constant, lines.slope
+    if belief.atoms() or not lines.crossing:
         return _searched(constant, slope, belief, probabilities, odds(_inside(belief.ppf(uniforms))))
     table = belief_table(belief)
     r = table.odds(uniforms)
     found = np.empty((len(constant), len(probabilities)))
     for point, (c, k) in enumerate(zip(constant, slope, strict=True)):
         # A point at a time, as its draws stay in the fastest memory.
-        solved = None
-        if k.all():
-            below = _LowerProbability(c, k, table)
-            before = found[max(0, point - max(LEADS)) : point]
-            solved = _newton(below, probabilities, _led_to(before)) if len(before) else None
-            if solved is None:
-                solved = _newton(below, probabilities, ordered_quantiles(np.sort(c - k * r), probabilities))
+        below = _LowerProbability(lines, point, table)
+        before = found[max(0, point - max(LEADS)) : point]
+        solved = _newton(below, probabilities, _led_to(before)) if len(before) else None
+        if solved is None:
+            solved = _newton(below, probabilities, ordered_quantiles(np.sort(c - k * r), probabilities))
         if solved is None:
             solved = _searched(c[None], k[None], belief, probabilities, r)[0]
         found[point] = solved
@@ -64,18 +64,20 @@ class _LowerProbability:
     function of the belief is taken or its complement.
     """
 
-    def __init__(self, constant: Array, slope: Array, table: BeliefTable) -> None:
+    def __init__(self, lines: Lines, point: int, table: BeliefTable) -> None:
         self._table = table
-        self._rate = 1 / slope
-        self._intercept = constant * self._rate
-        self._sign = np.sign(slope) / -len(slope)
-        self._weight = np.abs(self._rate) / len(slope)
-        self._base = (slope > 0).mean()
+        self._rate, self._intercept = lines.rate[point], lines.intercept[point]
+        self._one_way = lines.one_way[point]
 
     def at(self, value: Array) -> tuple[Array, Array]:
         """Return probability and density at values, both of shape (value,)."""
         below, density = self._table.below_and_density(self._intercept - value[:, None] * self._rate)
-        return self._base + below @ self._sign, density @ self._weight
+        draws = len(self._rate)
+        if self._one_way:
+            # One sign for all draws: no more than sums are needed.
+            share = below.sum(axis=1) / draws
+            return 1 - share if self._one_way > 0 else share, self._one_way * (density @ self._rate) / draws
+        return np.mean(np.where(self._rate > 0, 1 - below, below), axis=1), density @ np.abs(self._rate) / draws
 
 
 def _newton(lower: _LowerProbability, probabilities: Array, start: Array) -> Array | None:

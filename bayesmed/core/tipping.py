@@ -11,6 +11,7 @@ from typing import Literal, Protocol
 import numpy as np
 
 from bayesmed.core.belief_table import CELLS, BeliefTable, belief_table
+from bayesmed.core.lines import Lines
 from bayesmed.core.mapping import Array
 
 Direction = Literal["above", "below"]
@@ -69,8 +70,14 @@ def claim_probability(constant: Array, slope: Array, limit: float, direction: Di
     Shapes of `constant` and `slope` are equal and kept. Where there are many draws and no atoms, the belief's
     distribution function is read from its table.
     """
-    if constant.size >= CELLS and not belief.atoms() and slope.all():
-        return _tabled_probability(constant, slope, limit, direction, belief_table(belief))
+    return lines_probability(Lines(constant, slope), limit, direction, belief)
+
+
+def lines_probability(lines: Lines, limit: float, direction: Direction, belief: Belief) -> Array:
+    """Return the same as :func:`claim_probability`, of lines that keep what the next belief will ask of them."""
+    constant, slope = lines.constant, lines.slope
+    if constant.size >= CELLS and not belief.atoms() and lines.crossing:
+        return _tabled_probability(lines, limit, direction, belief_table(belief))
     crossing = tipping_correlation(constant, slope, limit)
     # A positive slope means that larger correlations lower the effect.
     lower_side = (slope > 0) if direction == "above" else (slope < 0)
@@ -87,12 +94,12 @@ def claim_probability(constant: Array, slope: Array, limit: float, direction: Di
     return probability
 
 
-def _tabled_probability(constant: Array, slope: Array, limit: float, direction: Direction, table: BeliefTable) -> Array:
-    probability = (constant - limit) / slope
-    lines = probability.reshape(-1, probability.shape[-1])
-    for line in lines:
+def _tabled_probability(lines: Lines, limit: float, direction: Direction, table: BeliefTable) -> Array:
+    slope = lines.slope
+    probability = lines.intercept - limit * lines.rate
+    for point in probability.reshape(-1, probability.shape[-1]):
         # One at a time, as its draws stay in the fastest memory.
-        table.below(line)
+        table.below(point)
     upper_side = (slope < 0) if direction == "above" else (slope > 0)
     if upper_side.any():
         np.subtract(1, probability, out=probability, where=upper_side)

@@ -79,11 +79,10 @@ class Collapsed:
 
     @property
     def numbers(self) -> tuple[float, ...]:
-        """What the compiled model is given of the equation."""
-        return (
-            self.rows - (len(self.centre) - self.touched), self.squares, float(self.pull @ self.pull), self.touched,
-            self.share, self.unit, self.log_sd - self.log_response_sd,
-        )  # fmt: skip
+        """What the compiled model is given of the equation: its slope in -log(σ / s), S, |g|², r, b and the unit."""
+        beyond = self.log_sd - self.log_response_sd
+        slope = self.rows - (len(self.centre) - self.touched) + beyond / SIGMA_LOG_SD**2
+        return slope, self.squares, float(self.pull @ self.pull), self.touched, self.share, self.unit
 
 
 def collapsed(regression: Regression, terms: tuple[str, ...]) -> Collapsed:
@@ -160,14 +159,14 @@ def shared_model(data: dict[str, Array]) -> Any:
     with pm.Model() as model:
         # One block, as every piece of data by itself takes time to compile.
         held = pm.Data("equations", data["equations"])
-        rows, squares, pull, touched, share, unit, beyond = (held[k] for k in range(7))
+        slope, squares, pull, touched, share, unit = (held[k] for k in range(6))
         x = pm.Flat("x", shape=2, initval=np.zeros(2))
         log_ratio = unit * x
         w = pt.exp(-2 * log_ratio)
         precision = w * (1 - share) + share
         of_terms = (w - 1) ** 2 * pull / precision - touched * pt.log(precision)
-        spread = ((log_ratio + beyond) / SIGMA_LOG_SD) ** 2
-        pm.Potential("density", pt.sum((of_terms - w * squares - spread) / 2 - rows * log_ratio))
+        spread = (log_ratio / SIGMA_LOG_SD) ** 2
+        pm.Potential("density", pt.sum((of_terms - w * squares - spread) / 2 - slope * log_ratio))
     return model
 
 
@@ -181,4 +180,4 @@ def _has_constant(regression: Regression) -> bool:
 @lru_cache(maxsize=1)
 def _compiled() -> Any:
     """Return the shared model compiled, with data of no study in it."""
-    return compile_model(shared_model({"equations": np.ones((7, 2))}))
+    return compile_model(shared_model({"equations": np.ones((6, 2))}))

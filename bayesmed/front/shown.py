@@ -7,7 +7,7 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
-from bayesmed.conclusions.words import number_text, probability_text, value_text
+from bayesmed.conclusions.words import harmless, number_text, probability_text, value_text
 
 NUMBERS = ("mean", "sd", "lower", "upper", "median", "rho", "left_out")
 CORRELATIONS = ("interval_down", "interval_up", "required_down", "required_up")
@@ -36,15 +36,15 @@ def shown(table: pd.DataFrame) -> pd.DataFrame:
 
 def as_text(table: pd.DataFrame) -> str:
     """Return a table as aligned plain text."""
-    return shown(table).to_string(index=False)
+    return harmless(shown(table).to_string(index=False))
 
 
 def as_html(sentence: str, table: pd.DataFrame) -> str:
     """Return a sentence and under it a table, everything escaped, in colours taken from the notebook."""
     from html import escape
 
-    body = shown(table).to_html(index=False, escape=True, border=0, justify="left")
-    paragraphs = "".join(f"<p>{escape(line)}</p>" for line in sentence.splitlines() if line)
+    body = harmless(shown(table).to_html(index=False, escape=True, border=0, justify="left"))
+    paragraphs = "".join(f"<p>{escape(harmless(line))}</p>" for line in sentence.splitlines() if line)
     return f"<div>{paragraphs}{body}</div>"
 
 
@@ -57,7 +57,7 @@ class Shown(ABC):
 
     def __repr__(self) -> str:
         before, table, after = self._parts()
-        return "\n".join([before, "", as_text(table), *(["", *after] if after else [])])
+        return "\n".join([harmless(before), "", as_text(table), *(["", *map(harmless, after)] if after else [])])
 
     def _repr_html_(self) -> str:
         before, table, after = self._parts()
@@ -75,8 +75,9 @@ class Shown(ABC):
             numbers = pd.api.types.is_numeric_dtype(table[name])
             made.add_column(Text(str(name)), justify="right" if numbers else "left", overflow="fold")
         for row in words.itertuples(index=False):
-            made.add_row(*(Text(str(cell)) for cell in row))
-        return Group(Text(before), Text(), made, *([Text()] if after else []), *(Text(line) for line in after))
+            made.add_row(*(Text(harmless(str(cell))) for cell in row))
+        told = [Text(harmless(line)) for line in after]
+        return Group(Text(harmless(before)), Text(), made, *([Text()] if told else []), *told)
 
 
 def _error_text(error: float) -> str:

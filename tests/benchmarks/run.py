@@ -106,22 +106,24 @@ def beliefs_against_resampling(quick: bool) -> Iterator[Row]:
     at = {"z": VALUES}
     o = asked.observed
     compiled = compiled_rival(o.mediator_design, o.outcome_design, o.mediator, o.outcome)
-    bounds = iter(np.tile([[-0.3, 0.6], [0.0, 0.5], [-0.9, 1.8], [0.3, 1e-6]], (500, 1)))
+    # The rival's model knows uniform beliefs: each of ours stands for one of about its width, and rho for a point.
+    bounds = [(-0.3, 0.6), (0.0, 0.5), (-0.9, 1.8), (0.0, 0.5), (-0.9, 1.8), (-0.6, 1.2), (-0.9, 1.8), (-0.9, 1.8)]
+    bounds += [(0.1 * k, 1e-6) for k in range(-9, 10)]
 
     def again() -> None:
-        lower, width = next(bounds)
-        moved = compiled.with_data(rho_lower=lower, rho_width=width)
-        nutpie.sample(moved, draws=1000, tune=1000, chains=4, seed=1, progress_bar=False)
+        for lower, width in bounds:
+            moved = compiled.with_data(rho_lower=lower, rho_width=width)
+            nutpie.sample(moved, draws=1000, tune=1000, chains=4, seed=1, progress_bar=False)
 
     def ours() -> None:
         fresh = bm.Fit(fit.result.replaced())
         fresh.compare(BELIEFS, at=at)
         fresh.rho_grid(at=at)
 
-    mine, once = alternated(ours, again, 3 if quick else 7)
-    ratio = 27 * once / mine
+    mine, theirs = alternated(ours, again, 3 if quick else 5)
+    ratio = theirs / mine
     what = "`compare` with 8 priors and `rho_grid` at 19 ρ, 21 moderator values, 4,000 draws, all effects"
-    yield Row(what, f"{mine:.3f} s", f"27 × {once:.3f} s", f"{ratio:.0f} × faster", "≥ 100 ×", ratio >= 100)
+    yield Row(what, f"{mine:.3f} s", f"27 samplings, {theirs:.2f} s", f"{ratio:.0f} × faster", "≥ 100 ×", ratio >= 100)
     families = {"mean": np.linspace(-0.5, 0.5, 60), "sd": np.linspace(0.02, 0.4, 60)}
     mapped = float(np.median([seconds(lambda: fit.prior_map(at=at, **families)) for _ in range(3)]))
     yield Row("`prior_map`, 60 × 60 × 21", f"{mapped:.3f} s", "–", "–", "≤ 0.3 s", mapped <= 0.3)

@@ -225,3 +225,11 @@ def test_with_nuts(quick: Write, tmp_path: Path, capsys: Captured) -> None:
     page = (tmp_path / "out" / "report.md").read_text(encoding="utf-8")
     assert "2 chains of 100 draws, after 200 to adapt, were made with the No-U-Turn sampler" in page
     assert "pymc 6." in page
+
+
+def test_a_label_of_a_strangers_file_cannot_command_the_terminal(quick: Write, capsys: Captured) -> None:
+    path = quick(**{'"nothing left out"': '"\\u001b[31mred\\u001b[0m"'})
+    assert main(["compare", str(path)]) == 0
+    printed = capsys.readouterr().out
+    assert "\x1b" not in printed
+    assert "\\x1b[31mred" in printed

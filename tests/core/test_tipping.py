@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from bayesmed.core.line_moments import line_moments
+from bayesmed.core.lines import Lines, line_moments
 from bayesmed.core.mapping import odds
 from bayesmed.core.quantiles import effect_quantiles
 from bayesmed.core.tipping import claim_probability, tipping_correlation
@@ -63,7 +63,7 @@ def test_an_interval_and_a_probability_cannot_disagree(lines, belief):
     constant, slope = lines
     uniforms = np.random.default_rng(1).random(constant.shape[1])
     wanted = np.array([0.025, 0.5, 0.9])
-    found = effect_quantiles(constant, slope, belief, wanted, uniforms)
+    found = effect_quantiles(Lines(constant, slope), belief, wanted, uniforms)
     step = 1 / constant.shape[1]
     for point in range(3):
         for value, probability in zip(found[point], wanted, strict=True):

@@ -93,6 +93,17 @@ def test_a_hostile_column_and_level_are_shown_whole(name: str) -> None:
         assert name in repr(each)
 
 
+@pytest.mark.parametrize("label", ["\x1b[31mred\x1b[0m", "ab\u202ecd", "bell\x07"])
+def test_a_label_cannot_command_a_terminal_or_turn_the_writing(fit: bm.Fit, label: str) -> None:
+    comparison = fit.compare({label: 0.0, "half": bm.Uniform(0, 0.5)}, at={})
+    out = io.StringIO()
+    Console(file=out, width=400, force_terminal=False).print(comparison)
+    spelt = ascii(label)[1:-1]
+    for text in (repr(comparison), out.getvalue(), unescape(comparison._repr_html_())):
+        assert spelt in text
+        assert label not in text
+
+
 def test_rich_says_what_text_says(fit: bm.Fit) -> None:
     for each in (fit, fit.compare({"none": 0.0}), fit.tipping(), fit.yardsticks("age")):
         out = io.StringIO()

@@ -1,11 +1,50 @@
-"""Mean and SD of an effect over draws and belief, in closed form from the moments of its line."""
+"""Draws of an effect as lines in r, and what every belief asks of them, worked out once."""
 
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Protocol
 
 import numpy as np
 
 from bayesmed.core.mapping import Array
+
+
+@dataclass(frozen=True, eq=False)
+class Lines:
+    """An effect ``constant - slope r`` at each moderator point and draw.
+
+    Attributes
+    ----------
+    constant, slope : array, shape (point, draw)
+    """
+
+    constant: Array
+    slope: Array
+
+    @cached_property
+    def moments(self) -> "LineMoments":
+        """Moments of the lines over draws."""
+        return line_moments(self.constant, self.slope)
+
+    @cached_property
+    def crossing(self) -> bool:
+        """True if every line has a slope, so that each crosses every value once."""
+        return bool(self.slope.all())
+
+    @cached_property
+    def rate(self) -> Array:
+        """``1 / slope``, for lines that all have one."""
+        return np.asarray(1 / self.slope)
+
+    @cached_property
+    def intercept(self) -> Array:
+        """The r at which each line crosses zero; it crosses v at ``intercept - rate v``."""
+        return np.asarray(self.constant * self.rate)
+
+    @cached_property
+    def one_way(self) -> Array:
+        """The sign of all slopes of a point, or 0 where they differ, shape (point,)."""
+        return np.nan_to_num(self.moments.signs, nan=0.0)
 
 
 class HasOddsMoments(Protocol):
