@@ -168,6 +168,8 @@ def _settings() -> Iterator[None]:
     settings: Any = {
         "font.family": [FONT],
         "text.usetex": False,
+        # Letters fitted to pixels are wider than those that are measured.
+        "text.hinting": "none",
         "axes.unicode_minus": True,
         "hatch.linewidth": 0.8,
         "hatch.color": colours().ink,

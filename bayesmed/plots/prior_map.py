@@ -16,7 +16,7 @@ from bayesmed.priors.accept import coerce
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
-MARKERS = ("o", "s", "^", "D", "v", "P", "X", "<", ">", "p", "h", "d")
+MARKERS = ("o", "s", "^", "D", "v", "P", "X", "<", ">", "p", "*", "d")
 LEVELS = (0.5, 0.8)
 """Probabilities below what is required at which the ground changes."""
 
@@ -70,7 +70,9 @@ def plot_prior_map(
             for look, low, high in zip(looks, spans[:-1], spans[1:], strict=True)
         ]
         key[-1] = (area_sign(**looks[-1]), f"holds: {required:g} or more")
-        key += [(mark_sign(**_mark(k)), style().named(label)) for k, label in enumerate(accepted)]
+        for k, (label, belief) in enumerate(accepted.items()):
+            place = "" if _on(plane, belief) else " (off the map, at its edge)"
+            key.append((mark_sign(**_mark(k)), style().named(label) + place))
         if np.isnan(plane).any():
             key.append((area_sign(**_nowhere()), "no belief of the family"))
         made = frame(words, [head(p) if p else "" for p in points], key, height=2.4, along="mean of ρ under the belief",
@@ -78,8 +80,9 @@ def plot_prior_map(
         for axes, grid in zip(made.panels, plane.to_numpy().reshape(-1, *plane.shape[-2:]), strict=True):
             _plane(axes, plane["mean"].to_numpy(), plane["sd"].to_numpy(), grid, spans, looks)
             for k, belief in enumerate(accepted.values()):
-                sd = max(belief.rho_sd(), float(plane["sd"][0]))
-                axes.plot([belief.rho_mean()], [sd], linestyle="", zorder=6, clip_on=False, **_mark(k))
+                mean = np.clip(belief.rho_mean(), *plane["mean"].to_numpy()[[0, -1]])
+                sd = np.clip(belief.rho_sd(), *plane["sd"].to_numpy()[[0, -1]])
+                axes.plot([mean], [sd], linestyle="", zorder=6, clip_on=False, **_mark(k))
         return Picture(made.sheet.figure, words, _text(plane, points, accepted, required), colours().paper)
 
 
@@ -105,6 +108,12 @@ def _plane(axes: "Axes", mean: Any, sd: Any, grid: Any, spans: list[float], look
     axes.set_xlim(mean[0], mean[-1])
     axes.set_ylim(sd[0], sd[-1])
     minus(axes)
+
+
+def _on(plane: xr.DataArray, belief: Any) -> bool:
+    """True if the map reaches a belief's mean and SD; a point belief lies at its foot."""
+    (lowest, highest), widest = plane["mean"].to_numpy()[[0, -1]], float(plane["sd"][-1])
+    return bool(lowest <= belief.rho_mean() <= highest and belief.rho_sd() <= widest)
 
 
 def _mark(k: int) -> dict[str, Any]:

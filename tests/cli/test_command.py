@@ -148,11 +148,15 @@ def test_version(capsys: Captured) -> None:
 def test_an_interrupt_leaves_nothing_and_is_code_130(
     quick: Write, tmp_path: Path, capsys: Captured, monkeypatch: pytest.MonkeyPatch, where: str
 ) -> None:
+    # Started in the background, a process ignores the signal and so would Python.
+    before_us = signal.signal(signal.SIGINT, signal.default_int_handler)
     at = {"completed": room, "write_findings": folder_room}.get(where, fitted_room)
     monkeypatch.setattr(at, where, lambda *_, **__: signal.raise_signal(signal.SIGINT))
     path = quick()
     before = {each.name for each in tmp_path.iterdir()}
-    assert main(["report", str(path), "--out", str(tmp_path / "out"), "--quiet"]) == 130
+    code = main(["report", str(path), "--out", str(tmp_path / "out"), "--quiet"])
+    signal.signal(signal.SIGINT, before_us)
+    assert code == 130
     assert capsys.readouterr().err == "bayesmed: interrupted; nothing was written\n"
     assert {each.name for each in tmp_path.iterdir()} == before
 

@@ -1,11 +1,13 @@
 """What the further pictures show and say: numbers of the conclusions, themes, words and refusals."""
 
 import re
+from pathlib import Path
 
 import numpy as np
 import pytest
 from matplotlib.colors import to_rgb
 from matplotlib.figure import Figure
+from matplotlib.image import imread
 
 import bayesmed as bm
 from bayesmed import plots
@@ -152,3 +154,26 @@ def test_what_cannot_be_drawn_is_refused(knee: FitResult) -> None:
     ):
         with pytest.raises(ArgumentError, match=words):
             action()
+
+
+def test_a_belief_off_the_map_stays_on_its_edge_and_is_said_to_be_off(knee: FitResult) -> None:
+    mapped = prior_map(knee, at={"confidence": 4}, mean=[-0.5, 0, 0.5], sd=[0.1, 0.6])
+    made = plots.plot_prior_map(mapped, {"wide": bm.StretchedBeta(0.6, 0.6), "far": bm.PointMass(0.8), "in": bm.LKJ(4)})
+    panel = made.figure.axes[-1]
+    for line in panel.lines:
+        if line.get_marker() not in ("None", None):
+            assert -0.5 <= line.get_xdata()[0] <= 0.5
+            assert 0.1 <= line.get_ydata()[0] <= 0.6
+    words = [text.get_text() for text in made.figure.texts]
+    assert sum("(off the map" in word for word in words) == 2
+    assert made.text.count("off the map") == 2
+
+
+@pytest.mark.parametrize("dpi", [72, 95, 150])
+def test_long_labels_are_not_cut_at_any_resolution(knee: FitResult, tmp_path: Path, dpi: int) -> None:
+    """As drawn: nothing but paper in the outermost pixels of the file."""
+    mapped = prior_map(knee, at={}, mean=[-0.5, 0, 0.5], sd=[0.1, 0.6])
+    path = plots.plot_prior_map(mapped, {"M" * 300: 0.0, "b": bm.LKJ(2)}).savefig(tmp_path / "p.png", dpi=dpi)
+    pixels = imread(path)[..., :3]
+    for edge in (pixels[:, :2], pixels[:, -2:], pixels[:2], pixels[-2:]):
+        assert edge.min() > 0.99
