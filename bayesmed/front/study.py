@@ -3,7 +3,6 @@
 from collections.abc import Callable, Mapping, Sequence
 from typing import TYPE_CHECKING, Any, Literal
 
-from bayesmed.study.audit import Audit, audit
 from bayesmed.study.observe import Observed, observe
 
 if TYPE_CHECKING:
@@ -11,6 +10,7 @@ if TYPE_CHECKING:
 
     from bayesmed.front.fit import Fit
     from bayesmed.priors import Coefficients
+    from bayesmed.study.audit import Audit
 
 
 class Study:
@@ -242,8 +242,10 @@ class Study:
 
         return rounding(self, ask, draws=draws, chains=chains, random_seed=random_seed)
 
-    def audit(self) -> Audit:
+    def audit(self) -> "Audit":
         """Return what a careful reader would check before fitting: rows, arms, spread, rank, what informs rho."""
+        from bayesmed.study.audit import audit
+
         return audit(self.observed)
 
     def model(self, rho: Any = None, coefficients: "Coefficients | None" = None) -> Any:
