@@ -132,8 +132,7 @@ class _Search:
             assert isinstance(result, GroupedResult)  # the view of the first grid has refused other fits
             groups = list(result.groups_of(chosen))
             if len(groups) > 1:
-                drawn = view(result, chosen, belief).draws(self.claim.effect)
-                true = drawn > self.claim.limit if self.claim.direction == "above" else drawn < self.claim.limit
+                true = self.claim.true_of(view(result, chosen, belief).draws(self.claim.effect)) > 0
                 # A rho for each group is no one interval: true or not by draw, as if rho were in (-1, 1) or not.
                 return _Truth(np.where(true, -1.0, 1.0), np.where(true, 1.0, -1.0), None, result)
             belief = belief.of(groups[0])

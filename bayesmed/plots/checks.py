@@ -1,6 +1,6 @@
 """Whether the two regressions describe the rows: values they predict beside those seen, and spread along variables."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -11,7 +11,7 @@ from bayesmed.fit.result import FitResult
 from bayesmed.plots.opened import opened
 from bayesmed.plots.panels import area_sign, frame, line_sign, mark_sign, minus
 from bayesmed.plots.picture import Picture, colours, drawing, style
-from bayesmed.study.spread import residual_spread
+from bayesmed.study.spread import Spread, residual_spread
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -102,6 +102,17 @@ def plot_spread(
     found = residual_spread(result.observed)
     if not found:
         raise ArgumentError("plot_spread: no group has rows enough to compare residuals")
+    return spread_drawn(found, title, theme, labels, ax)
+
+
+def spread_drawn(
+    found: Sequence[Spread],
+    title: str | None = None,
+    theme: Any = "blue",
+    labels: Mapping[str, str] | None = None,
+    ax: Any = None,
+) -> Picture:
+    """Draw comparisons of residual spread that were made before, as an audit makes them; see :func:`plot_spread`."""
     words = title or "Residual spread of both regressions, by exposure and moderator"
     with drawing(theme, labels, ax):
         named = style().named

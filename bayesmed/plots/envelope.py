@@ -12,7 +12,7 @@ from bayesmed.conclusions.words import probability_text
 from bayesmed.core.errors import ArgumentError
 from bayesmed.fit.result import FitResult
 from bayesmed.plots.opened import opened
-from bayesmed.plots.panels import area_sign, frame, line_sign, minus
+from bayesmed.plots.panels import area_sign, frame, line_sign, minus, some_rows
 from bayesmed.plots.people import people
 from bayesmed.plots.picture import Picture, colours, drawing, style
 
@@ -90,9 +90,8 @@ def plot_envelope(
 
 
 def _text(table: pd.DataFrame, words: str, moderator: str, claim: Claim) -> str:
-    places = np.unique(np.linspace(0, len(table) - 1, min(len(table), 9)).round().astype(int))
     lines = [f"Smallest and largest probability of {claim} over the set; the claim requires {claim.required:g}."]
-    for _, row in table.iloc[places].iterrows():
+    for _, row in some_rows(table).iterrows():
         low = probability_text(row["lower"], row["lower_mcse"])
         high = probability_text(row["upper"], row["upper_mcse"])
         lines.append(f"  {words} = {row[moderator]:.4g}: {low} to {high}")

@@ -4,12 +4,14 @@ from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
+import numpy as np
+
 from bayesmed.conclusions.words import point_text
-from bayesmed.core.errors import ArgumentError
 from bayesmed.plots.layout import Sheet, broken, line_height, sheet_width, text_width
 from bayesmed.plots.picture import colours, style
 
 if TYPE_CHECKING:
+    import pandas as pd
     from matplotlib.axes import Axes
 
 TITLE_SIZE, HEAD_SIZE, SIZE = 11.0, 9.0, 8.0
@@ -45,6 +47,12 @@ class Frame:
     def leftmost(self, k: int) -> bool:
         """True if a panel is the first of its row."""
         return self.places[k][0] == self.places[0][0]
+
+    def name_row(self, lines: list[str], k: int, down: float, height: float) -> None:
+        """Write the name of a row of a panel to its left, in the middle of the row that starts `down` inches below."""
+        across, top = self.places[k]
+        middle = top + down + (height - len(lines) * line_height(SIZE)) / 2
+        self.sheet.write(lines, across - 0.12, middle, SIZE, ha="right")
 
 
 def frame(
@@ -134,11 +142,10 @@ def minus(axes: "Axes", *, x: int = 5, y: int = 5) -> None:
         axis.set_major_formatter(shown)
 
 
-def single(names: Sequence[str], asked: str) -> str:
-    """Return the one name there is, or say that there should be one."""
-    if len(names) != 1:
-        raise ArgumentError(f"{asked}: one moderator is needed along the axis; found {', '.join(names) or 'none'}")
-    return names[0]
+def some_rows(table: "pd.DataFrame", most: int = 9) -> "pd.DataFrame":
+    """Return a few rows of a table at about equal distances, the first and the last among them, to be told in words."""
+    places = np.linspace(0, len(table) - 1, min(len(table), most)).round().astype(int)
+    return table.iloc[np.unique(places)]
 
 
 def line_sign(**options: Any) -> Sign:

@@ -89,9 +89,8 @@ def plot_prior_map(
 def _looks(count: int) -> list[dict[str, Any]]:
     """Return how each stretch of probability is filled, emptiest first: told apart by hatching, not by shade alone."""
     theme = colours()
-    hatches = ["", "...", "////"][-count:] if count < 3 else ["", "...", "////"]
-    looks: list[dict[str, Any]] = [{"facecolor": theme.paper, "hatch": hatch} for hatch in hatches]
-    return [*looks[:count], {"facecolor": theme.wash, "hatch": ""}]
+    below: list[dict[str, Any]] = [{"facecolor": theme.paper, "hatch": hatch} for hatch in ("", "...", "////")]
+    return [*below[-count:], {"facecolor": theme.wash, "hatch": ""}]
 
 
 def _plane(axes: "Axes", mean: Any, sd: Any, grid: Any, spans: list[float], looks: list[dict[str, Any]]) -> None:

@@ -61,14 +61,12 @@ def plot_rho(
         after = "belief after them" if informed else "after them: the same, as these data are silent on ρ"
         key.append((line_sign(linewidth=1.8), after))
         made = frame(words, [""], key, height=sum(heights), left=left, along="ρ, residual correlation", usual=7.5)
-        (axes,), ((across, top),) = made.panels, made.places
+        (axes,) = made.panels
         axes.set_ylim(sum(heights), 0)
         axes.set_xlim(-1, 1)
         down = 0.0
         for (label, belief), lines, high in zip(result.beliefs.items(), named, heights, strict=True):
-            made.sheet.write(
-                lines, across - 0.12, top + down + (high - len(lines) * line_height(SIZE)) / 2, SIZE, ha="right"
-            )
+            made.name_row(lines, 0, down, high)
             down += high
             seen = result.views[label]
             drawn = (seen.rho, seen.weights) if informed and seen.rho is not None else None

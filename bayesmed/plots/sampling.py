@@ -64,7 +64,7 @@ def plot_sampling(
         axes.axvline(LEAST_ESS, color=colours().ink, linewidth=1.0, linestyle=(0, (5, 3)))
         down = 0.0
         for one, high, (_, row) in zip(lines, heights, table.iterrows(), strict=True):
-            made.sheet.write(one, across - 0.12, top + down + 0.04, SIZE, ha="right")
+            made.name_row(one, 0, down, high)
             y = down + high / 2
             axes.plot([0, max(row["bulk"], row["tail"])], [y, y], color=colours().faint, linewidth=0.5, zorder=0)
             axes.plot([row["bulk"]], [y], marker="o", markersize=5, color=colours().ink)

@@ -92,9 +92,7 @@ def _draw(result: TippingResult, beliefs: dict[str, Any], found: dict[str, Any],
         row_top = top + 1.2
         for (label, belief), lines, high in zip(beliefs.items(), named, heights, strict=True):
             if made.leftmost(k):
-                sheet.write(
-                    lines, across - 0.12, row_top + (high - len(lines) * line_height(SIZE)) / 2, SIZE, ha="right"
-                )
+                made.name_row(lines, k, row_top - top, high)
             strip = sheet.axes(across, row_top + high - HILL, made.width, HILL)
             _hill(strip, belief, result, k)
             strip.set_xlim(-1, end)

@@ -3,12 +3,11 @@
 from collections.abc import Mapping, Sequence
 from typing import Any
 
-import numpy as np
 import pandas as pd
 
 from bayesmed.conclusions.tipping import TippingResult
 from bayesmed.plots.opened import opened
-from bayesmed.plots.panels import area_sign, frame, line_sign, minus
+from bayesmed.plots.panels import area_sign, frame, line_sign, minus, some_rows
 from bayesmed.plots.people import people
 from bayesmed.plots.picture import Picture, colours, drawing, style
 
@@ -71,10 +70,9 @@ def plot_tipping_curve(
 
 
 def _text(table: pd.DataFrame, words: str, moderator: str, width: str) -> str:
-    places = np.unique(np.linspace(0, len(table) - 1, min(len(table), 9)).round().astype(int))
     lines = [f"The correlation at which the claim tips: median, and {width} of the draws."]
     lines += [
         f"  {words} = {row[moderator]:.4g}: {row['median']:.2f} [{row['lower']:.2f}, {row['upper']:.2f}]"
-        for _, row in table.iloc[places].iterrows()
+        for _, row in some_rows(table).iterrows()
     ]
     return "\n".join(lines)

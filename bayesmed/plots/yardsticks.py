@@ -74,14 +74,12 @@ def plot_yardsticks(
         if tips is not None:
             key.append((area_sign(), f"where draws tip the claim, {tips.claim}: median and {100 * tips.ci_prob:g} %"))
         made = frame(words, [""], key, height=sum(heights), left=left, along="ρ, residual correlation", usual=8.0)
-        (axes,), ((across, top),) = made.panels, made.places
+        (axes,) = made.panels
         axes.set_ylim(sum(heights), 0)
         axes.set_xlim(-1, 1)
         down = 0.0
         for k, (one, height) in enumerate(zip(lines, heights, strict=True)):
-            made.sheet.write(
-                one, across - 0.12, top + down + (height - len(one) * line_height(SIZE)) / 2, SIZE, ha="right"
-            )
+            made.name_row(one, 0, down, height)
             if k < len(covariates):
                 _causes(axes, table[table["covariate"] == covariates[k]], marks, down, height)
             elif tips is not None:

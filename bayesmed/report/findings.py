@@ -1,6 +1,5 @@
 """Everything a report says, worked out once from a fit: first the answer, then what may overturn it."""
 
-import dataclasses
 import warnings
 from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
@@ -57,18 +56,11 @@ class Answer:
 
 
 @dataclass(frozen=True, eq=False)
-class Findings:
-    """What a report says.
+class Findings(Answer):
+    """What a report says: the answer, and what else was worked out.
 
     Attributes
     ----------
-    title : str
-    result : FitResult
-    audit : Audit
-    comparison : ComparisonResult
-        Under every belief; holds claim, moderator points and interval width too.
-    own_beliefs : bool
-        False where the documented default set of beliefs stands in.
     grid : pandas.DataFrame
         Of ``rho_grid``: every effect at fixed correlations.
     reaches : tuple of Reach
@@ -81,22 +73,19 @@ class Findings:
         Smallest and largest probability over all beliefs within ``ANY_WITHIN``; None where there is no tipping.
     complaints : list of str
         Diagnostics outside their bounds.
-    warnings : tuple of str
-        What was warned of while concluding, each once.
     """
 
-    title: str
-    result: FitResult
-    audit: Audit
-    comparison: ComparisonResult
-    own_beliefs: bool
     grid: pd.DataFrame
     reaches: "tuple[Reach, ...]"
     tipping: "TippingResult | None"
     yardsticks: "YardsticksResult | None"
     envelope: pd.DataFrame | None
     complaints: list[str]
-    warnings: tuple[str, ...]
+
+    @property
+    def warnings(self) -> tuple[str, ...]:
+        """What the package warned of while concluding, each once."""
+        return tuple(words for words, message in self.warned.items() if isinstance(message, BayesmedWarning))
 
 
 def find(
@@ -165,26 +154,19 @@ def completed(first: Answer) -> Findings:
     result, comparison, at = first.result, first.comparison, first.at
     claim, ci_prob = comparison.claim, comparison.ci_prob
     tips = not result.joint and claim.effect != "total"
-    warned = dict(first.warned)
-    with _each_warning_once(warned):
+    told = vars(first) | {"warned": dict(first.warned)}
+    with _each_warning_once(told["warned"]):
         grid = rho_grid(result, None, at, claim, ci_prob)
         found_tipping = tipping(result, at, claim, ci_prob) if tips else None
-        found = Findings(
-            title=first.title,
-            result=result,
-            audit=first.audit,
-            comparison=comparison,
-            own_beliefs=first.own_beliefs,
+        return Findings(
+            **told,
             grid=grid,
             reaches=reaches(claim, grid, found_tipping),
             tipping=found_tipping,
             yardsticks=_yardsticks(result, at, claim) if tips else None,
             envelope=envelope(result, AnyOn(*ANY_WITHIN), at, claim) if tips else None,
             complaints=complaints_about(result),
-            warnings=(),
         )
-    ours = (words for words, message in warned.items() if isinstance(message, BayesmedWarning))
-    return dataclasses.replace(found, warnings=tuple(ours))
 
 
 @contextmanager

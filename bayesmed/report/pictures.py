@@ -92,7 +92,7 @@ def _rho(findings: Findings) -> "Picture | None":
 def _spread(findings: Findings) -> "Picture | None":
     from bayesmed.plots import checks
 
-    return checks.plot_spread(findings.result) if findings.audit.spread else None
+    return checks.spread_drawn(findings.audit.spread) if findings.audit.spread else None
 
 
 def _by_group(findings: Findings) -> bool:
